@@ -1,0 +1,1 @@
+//! The one test binary. Each module is one kind of test.
