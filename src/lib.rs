@@ -19,7 +19,7 @@
 //! 8. [`report`] puts results onto the user's features and writes layers and a summary, all or nothing.
 //! 9. [`study`] reads the study file and runs the whole job: read, calculate, write.
 //!
-//! A room may use only the rooms above it in this list (and [`units`] and [`finding`], which all may use); a test reads
+//! A room may use only the rooms above it in this list (and [`units`], [`finding`] and [`watch`], which all may use); a test reads
 //! the source and enforces it. Bad map data is never an abort: it becomes a [`finding::Finding`] on the user's own feature.
 
 pub mod assets;
@@ -33,3 +33,4 @@ pub mod screening;
 pub mod study;
 pub mod topology;
 pub mod units;
+pub mod watch;

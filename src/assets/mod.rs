@@ -93,7 +93,7 @@ pub struct Main {
     pub drawing: Drawing,
     /// True length over length in the local plane: geodesic for lon/lat layers, 1 for projected ones.
     pub length_scale: f64,
-    /// The length the map stores, m, if it does and it is one.
+    /// The length the map stores, m, where the study says that it counts and it is one; else the drawn length counts.
     pub stored_length_m: Option<f64>,
     /// Inside diameter, m; `None` when the map has none that can be used (a finding says so).
     pub diameter_m: Option<Valued<f64>>,

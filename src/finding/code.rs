@@ -246,6 +246,10 @@ codes! {
         "A node point with a demand or a known head lies on no main."
         "Its demand or head is missing from the calculation."
         "Move the point onto its main."
+    HeadsDisagree "heads-disagree" Map Warning
+        "Two known heads stand on one node and differ."
+        "A node has one head; the first one read counts."
+        "Remove one of the two."
     ElevationUnknown "elevation-unknown" Map Warning
         "A part of the network has no known elevation to go by."
         "Pressure there cannot be calculated; it stays untested."

@@ -2,7 +2,14 @@
 //!
 //! Its nodes and parts are those of the `PipeMap`, one for one and in the same order.
 
+mod assemble;
+mod case;
+mod elevation;
+mod invariants;
+
 pub use crate::assets::{Basis, Friction, Valued};
+pub use assemble::{AssemblySettings, assemble};
+pub use case::Case;
 
 /// Index of a node.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Hash, PartialOrd, Ord)]
@@ -48,6 +55,8 @@ pub struct Part {
 pub struct Source {
     /// The node.
     pub node: NodeIx,
+    /// Index into `Assets::nodes` of the point that gives the head.
+    pub point: u32,
     /// Its head, m, and where that came from.
     pub head_m: Valued<f64>,
     /// Whether it is a tank.
@@ -80,6 +89,8 @@ pub struct Network {
     pub draws: Vec<Draw>,
     /// Whether each node hangs together with a source. The others are left out of the solve.
     pub served: Vec<bool>,
+    /// The bore each main is calculated with, m, by index into `Assets::mains`.
+    pub main_diameter_m: Vec<Valued<f64>>,
 }
 
 /// What varies between cases, fires and a hookup's before and after.

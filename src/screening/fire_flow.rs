@@ -1,0 +1,435 @@
+//! Fire flow: what every hydrant can give, held against what it should give.
+//!
+//! The available flow is the solution of the network with the hydrant held at its least head, not the end of a series of
+//! trial flows. It comes on top of the demands of the fire case. Needed flow comes from the hydrant's row, else from the
+//! study; a hydrant without one gets its available flow and is `not judged`.
+
+use std::sync::atomic::{AtomicU64, Ordering};
+
+use rayon::prelude::*;
+
+use super::coverage::Coverage;
+use super::{Fire, Flag, Solved, Subject};
+use crate::finding::{Code, Error, Finding, Sentence};
+use crate::hydraulics::{self, Kept, Solver, State};
+use crate::network::{Condition, NodeIx};
+use crate::units::Quantity;
+use crate::watch::{Watch, step};
+
+/// How many features a finding about already low places names.
+const NAMED_AT_MOST: usize = 50;
+
+/// What limits a hydrant.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum LimitBy {
+    /// Its own residual pressure.
+    OwnPressure,
+    /// Pressure where customers draw elsewhere: at this node.
+    Elsewhere(NodeIx),
+    /// A source's greatest flow, or nothing but the source it stands on.
+    Source,
+    /// It is below the residual limit with no hydrant open.
+    AlreadyLow,
+    /// It hangs together with no source, or taps no main.
+    Unserved,
+}
+
+impl LimitBy {
+    /// The words that are written.
+    pub fn word(self) -> &'static str {
+        match self {
+            LimitBy::OwnPressure => "own pressure",
+            LimitBy::Elsewhere(_) => "elsewhere",
+            LimitBy::Source => "source",
+            LimitBy::AlreadyLow => "already low",
+            LimitBy::Unserved => "unserved",
+        }
+    }
+}
+
+/// Whose elevation the residual pressure was judged at.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum JudgedAt {
+    /// The hydrant's own.
+    Hydrant,
+    /// That of the main it taps.
+    Main,
+}
+
+impl JudgedAt {
+    /// The word that is written.
+    pub fn word(self) -> &'static str {
+        match self {
+            JudgedAt::Hydrant => "hydrant",
+            JudgedAt::Main => "main",
+        }
+    }
+}
+
+/// What was found at a hydrant.
+#[derive(Clone, Debug, PartialEq, Default)]
+pub struct HydrantVerdict {
+    /// `ok`, `short`, `not judged` (no needed flow), `unserved` or `untested`.
+    pub flag: Flag,
+    /// Pressure with no hydrant open, m.
+    pub static_m: Option<f64>,
+    /// Needed flow, m3/s.
+    pub needed_m3_per_s: Option<f64>,
+    /// Flow at its own residual limit, m3/s.
+    pub available_m3_per_s: Option<f64>,
+    /// Flow at which the first limit anywhere is met, m3/s; `None` unless the study asks for it.
+    pub safe_m3_per_s: Option<f64>,
+    /// Pressure while it gives the needed flow, m.
+    pub at_need_m: Option<f64>,
+    /// What limits it.
+    pub limit_by: Option<LimitBy>,
+    /// Where it was judged.
+    pub judged_at: Option<JudgedAt>,
+}
+
+impl HydrantVerdict {
+    /// The flow that is held against the needed one, m3/s.
+    pub fn counted_m3_per_s(&self) -> Option<f64> {
+        match (self.available_m3_per_s, self.safe_m3_per_s) {
+            (Some(available), Some(safe)) => Some(available.min(safe)),
+            (available, safe) => safe.or(available),
+        }
+    }
+
+    /// How much of the needed flow is missing, m3/s.
+    pub fn short_m3_per_s(&self) -> Option<f64> {
+        Some((self.needed_m3_per_s? - self.counted_m3_per_s()?).max(0.0))
+    }
+}
+
+/// Fire flow, or why it was not run.
+#[derive(Clone, Debug, PartialEq)]
+pub enum FireRun {
+    /// Not run, and why.
+    NotRun(String),
+    /// One verdict a hydrant.
+    Run(Vec<HydrantVerdict>),
+}
+
+impl Default for FireRun {
+    fn default() -> Self {
+        FireRun::NotRun("it was not asked for".into())
+    }
+}
+
+impl FireRun {
+    /// The verdicts, if it was run.
+    pub fn verdicts(&self) -> Option<&[HydrantVerdict]> {
+        match self {
+            FireRun::Run(verdicts) => Some(verdicts),
+            FireRun::NotRun(_) => None,
+        }
+    }
+}
+
+pub(super) fn check(
+    subject: &Subject<'_>,
+    coverage: &Coverage,
+    solver: &Solver,
+    fire: Option<&Fire>,
+    findings: &mut Vec<Finding>,
+    watch: &dyn Watch,
+) -> Result<FireRun, Error> {
+    let Some((fire, solved, base)) = what_to_run(subject, fire) else {
+        let why = why_not(subject, fire);
+        if !subject.assets.hydrants.is_empty() {
+            findings.push(Finding::new(
+                Code::FireNotRun,
+                format!("fire flow was not run: {why}").into(),
+            ));
+        }
+        return Ok(FireRun::NotRun(why));
+    };
+    findings.extend(not_a_peak(subject, solved));
+    let (kept, already_low) = kept_places(subject, fire, base);
+    findings.extend(already_low_finding(subject, fire, &already_low));
+    let run = Run {
+        subject,
+        solver,
+        fire,
+        base,
+        condition: Condition {
+            demand_m3_per_s: solved.demand_m3_per_s.clone(),
+            source_head_m: subject.network.condition(&solved.case).source_head_m,
+        },
+        kept,
+    };
+    let total = subject.assets.hydrants.len() as u64;
+    let done = AtomicU64::new(0);
+    let verdicts: Result<Vec<HydrantVerdict>, Error> = (0..subject.assets.hydrants.len())
+        .into_par_iter()
+        .map(|hydrant| {
+            step(watch, "fire flow", done.fetch_add(1, Ordering::Relaxed), total)?;
+            Ok(run.judge(hydrant, coverage))
+        })
+        .collect();
+    let verdicts = verdicts?;
+    findings.extend(
+        verdicts
+            .iter()
+            .enumerate()
+            .filter_map(|(at, verdict)| run.short_finding(at, verdict)),
+    );
+    Ok(FireRun::Run(verdicts))
+}
+
+/// The fire case with its solution, if there is something to run.
+fn what_to_run<'a>(subject: &Subject<'a>, fire: Option<&'a Fire>) -> Option<(&'a Fire, &'a Solved, &'a State)> {
+    let fire = fire?;
+    let solved = subject.cases.get(fire.case)?;
+    let needed = fire.needed_m3_per_s.is_some()
+        || subject
+            .assets
+            .hydrants
+            .iter()
+            .any(|hydrant| hydrant.needed_m3_per_s.is_some());
+    Some((fire, solved, solved.outcome.as_ref().ok()?)).filter(|_| needed && !subject.assets.hydrants.is_empty())
+}
+
+fn why_not(subject: &Subject<'_>, fire: Option<&Fire>) -> String {
+    match fire {
+        _ if subject.assets.hydrants.is_empty() => "there are no hydrants".into(),
+        None => "the study names no fire case".into(),
+        Some(fire) => match subject.cases.get(fire.case) {
+            Some(solved) if solved.outcome.is_err() => format!("its case `{}` has no solution", solved.case.name),
+            _ => "there is no needed flow, neither in the study nor in a column of the hydrants".into(),
+        },
+    }
+}
+
+fn not_a_peak(subject: &Subject<'_>, solved: &Solved) -> Option<Finding> {
+    let average: f64 = subject.network.draws.iter().map(|draw| draw.demand_m3_per_s).sum();
+    let drawn: f64 = solved.demand_m3_per_s.iter().sum();
+    (drawn <= average * (1.0 + 1e-9)).then(|| {
+        let message = Sentence::new()
+            .text(format!("the fire case `{}` draws ", solved.case.name))
+            .number(drawn, Quantity::Flow)
+            .text(", no more than the average day's ")
+            .number(average, Quantity::Flow);
+        Finding::new(Code::FireCaseNotPeak, message).measured(drawn, Quantity::Flow)
+    })
+}
+
+/// Nodes whose pressure is to be kept while a hydrant flows, and those already below with no fire.
+///
+/// A node is kept at the ground of the highest customer that draws there, where customers' elevations are known.
+fn kept_places(subject: &Subject<'_>, fire: &Fire, base: &State) -> (Vec<Kept>, Vec<usize>) {
+    let Some(limit) = &fire.keep_elsewhere_m else {
+        return (Vec::new(), Vec::new());
+    };
+    let mut ground_m: Vec<Option<f64>> = vec![None; subject.map.nodes.len()];
+    let mut raise = |node: usize, elevation_m: Option<f64>| {
+        ground_m[node] = match (ground_m[node], elevation_m) {
+            (Some(old), Some(new)) => Some(f64::max(old, new)),
+            (old, new) => old.or(new),
+        };
+    };
+    for draw in subject
+        .network
+        .draws
+        .iter()
+        .filter(|draw| subject.network.served[draw.node.at()])
+    {
+        raise(
+            draw.node.at(),
+            subject.network.elevation_m[draw.node.at()].map(|elevation| elevation.value),
+        );
+    }
+    for (customer, tap) in subject.assets.customers.iter().zip(&subject.map.customers) {
+        if let Some(tap) = tap.filter(|tap| customer.demand_m3_per_s > 0.0 && subject.network.served[tap.node as usize])
+        {
+            raise(tap.node as usize, customer.elevation_m);
+        }
+    }
+    let (mut kept, mut already_low) = (Vec::new(), Vec::new());
+    for (node, ground_m) in ground_m.iter().enumerate() {
+        let Some(ground_m) = ground_m else { continue };
+        let head_m = ground_m + limit.value;
+        if base.head_m[node] < head_m {
+            already_low.push(node);
+        } else {
+            kept.push(Kept {
+                node: NodeIx(node as u32),
+                head_m,
+            });
+        }
+    }
+    (kept, already_low)
+}
+
+fn already_low_finding(subject: &Subject<'_>, fire: &Fire, already_low: &[usize]) -> Option<Finding> {
+    let limit = fire.keep_elsewhere_m.as_ref().filter(|_| !already_low.is_empty())?;
+    let low: std::collections::HashSet<usize> = already_low.iter().copied().collect();
+    let message = format!(
+        "{} places that customers draw at are below the limit with no hydrant open and were left out of `safe`",
+        already_low.len()
+    );
+    let mut finding = Finding::new(Code::AlreadyLow, message.into()).limit(limit.value, limit.from.clone());
+    finding.at = already_low.first().map(|node| subject.map.nodes[*node].at);
+    let customers = subject.assets.customers.iter().zip(&subject.map.customers);
+    let named =
+        customers.filter_map(|(customer, tap)| low.contains(&(tap.as_ref()?.node as usize)).then_some(customer.origin));
+    let points = already_low
+        .iter()
+        .filter_map(|node| super::pressure_low::feature_at(subject, *node));
+    finding.others = named.chain(points).take(NAMED_AT_MOST).collect();
+    Some(finding)
+}
+
+/// What every hydrant of a run shares.
+struct Run<'a> {
+    subject: &'a Subject<'a>,
+    solver: &'a Solver,
+    fire: &'a Fire,
+    base: &'a State,
+    condition: Condition,
+    kept: Vec<Kept>,
+}
+
+impl Run<'_> {
+    fn judge(&self, hydrant: usize, coverage: &Coverage) -> HydrantVerdict {
+        let asset = &self.subject.assets.hydrants[hydrant];
+        let needed = asset
+            .needed_m3_per_s
+            .map(|needed| needed.value)
+            .or(self.fire.needed_m3_per_s);
+        let blank = HydrantVerdict {
+            needed_m3_per_s: needed,
+            ..HydrantVerdict::default()
+        };
+        let unserved = HydrantVerdict {
+            flag: Flag::Unserved,
+            limit_by: Some(LimitBy::Unserved),
+            ..blank.clone()
+        };
+        let Some(tap) = self.subject.map.hydrants[hydrant] else {
+            return unserved;
+        };
+        let node = tap.node as usize;
+        if !self.subject.network.served[node] {
+            return unserved;
+        }
+        let at_main = self.subject.network.elevation_m[node].map(|elevation| (elevation.value, JudgedAt::Main));
+        let judged = asset
+            .elevation_m
+            .map(|elevation_m| (elevation_m, JudgedAt::Hydrant))
+            .or(at_main);
+        let Some((ground_m, judged_at)) = judged else {
+            return blank;
+        };
+        let mut verdict = HydrantVerdict {
+            static_m: Some(self.base.head_m[node] - ground_m),
+            judged_at: Some(judged_at),
+            at_need_m: needed.and_then(|needed| self.pressure_while_giving(node, needed, ground_m)),
+            ..blank
+        };
+        let own = Kept {
+            node: NodeIx(tap.node),
+            head_m: ground_m + self.fire.residual_m.value,
+        };
+        self.flows(own, &mut verdict);
+        verdict.flag = match (coverage.reason[node], verdict.short_m3_per_s(), verdict.limit_by) {
+            (Some(super::Untested::NotProved | super::Untested::NoSource), _, _) => Flag::Untested,
+            (_, Some(short), _) if short > 0.0 => Flag::Short,
+            (_, Some(_), _) => Flag::Ok,
+            (_, None, Some(_)) => Flag::NotJudged,
+            (_, None, None) => Flag::Untested,
+        };
+        verdict
+    }
+
+    /// The available flow, and the safe one if it is asked for.
+    fn flows(&self, own: Kept, verdict: &mut HydrantVerdict) {
+        let solve = |kept: &[Kept]| {
+            self.solver
+                .flow_at_held_head(&self.condition, self.base, own, kept)
+                .ok()
+        };
+        let finite = |flow: f64| Some(flow).filter(|flow| flow.is_finite());
+        let Some(alone) = solve(&[]) else { return };
+        verdict.available_m3_per_s = finite(alone.flow_m3_per_s);
+        verdict.limit_by = Some(limit_by(own.node, &alone.limit));
+        if self.fire.keep_elsewhere_m.is_none() {
+            return;
+        }
+        // Where the flow at the own limit breaks nothing elsewhere it is the safe flow too: no second solve.
+        let breaks_nothing = |state: &State| self.kept.iter().all(|kept| state.head_m[kept.node.at()] >= kept.head_m);
+        let first = if alone.state.as_ref().is_none_or(breaks_nothing) {
+            Some(alone)
+        } else {
+            solve(&self.kept)
+        };
+        let Some(first) = first else { return };
+        verdict.safe_m3_per_s = finite(first.flow_m3_per_s);
+        verdict.limit_by = Some(limit_by(own.node, &first.limit));
+    }
+
+    fn pressure_while_giving(&self, node: usize, needed: f64, ground_m: f64) -> Option<f64> {
+        let mut condition = self.condition.clone();
+        condition.demand_m3_per_s[node] += needed;
+        let state = self.solver.solve(&condition, Some(self.base)).ok()?;
+        Some(state.head_m[node] - ground_m)
+    }
+
+    fn short_finding(&self, hydrant: usize, verdict: &HydrantVerdict) -> Option<Finding> {
+        let (short, given) = (
+            verdict.short_m3_per_s().filter(|_| verdict.flag == Flag::Short)?,
+            verdict.counted_m3_per_s()?,
+        );
+        let asset = &self.subject.assets.hydrants[hydrant];
+        let mut message = Sentence::new()
+            .feature(asset.origin)
+            .text(" can give ")
+            .number(given, Quantity::Flow);
+        message = message.text(" of the needed ").number(given + short, Quantity::Flow);
+        message = match verdict.limit_by {
+            Some(LimitBy::Elsewhere(node)) => match who_draws_at(self.subject, node.at()) {
+                Some(other) => message.text("; pressure at ").feature(other).text(" is the limit"),
+                None => message.text(format!("; pressure at node {} is the limit", node.0 + 1)),
+            },
+            Some(LimitBy::AlreadyLow) => message.text("; it is below the residual limit with no hydrant open"),
+            Some(LimitBy::Source) => message.text("; the source gives no more"),
+            _ => message.text("; its own pressure is the limit"),
+        };
+        let limit_from = if asset.needed_m3_per_s.is_some() {
+            "map"
+        } else {
+            "study"
+        };
+        let mut finding = Finding::new(Code::FireFlowShort, message)
+            .on(asset.origin)
+            .measured(given, Quantity::Flow)
+            .limit(given + short, limit_from);
+        finding.at = asset.at;
+        finding.others = match verdict.limit_by {
+            Some(LimitBy::Elsewhere(node)) => who_draws_at(self.subject, node.at()).into_iter().collect(),
+            _ => Vec::new(),
+        };
+        Some(finding)
+    }
+}
+
+fn limit_by(own: NodeIx, limit: &hydraulics::Limit) -> LimitBy {
+    match limit {
+        hydraulics::Limit::Head(node) if *node == own => LimitBy::OwnPressure,
+        hydraulics::Limit::Head(node) => LimitBy::Elsewhere(*node),
+        hydraulics::Limit::AlreadyLow(_) => LimitBy::AlreadyLow,
+        hydraulics::Limit::Source(_) | hydraulics::Limit::Nothing => LimitBy::Source,
+    }
+}
+
+/// The user's feature at a node: its point, else the first customer who draws there.
+pub(crate) fn who_draws_at(subject: &Subject<'_>, node: usize) -> Option<crate::finding::FeatureRef> {
+    super::pressure_low::feature_at(subject, node).or_else(|| {
+        let taps = subject.map.customers.iter();
+        let at = taps
+            .enumerate()
+            .find_map(|(at, tap)| (tap.as_ref()?.node as usize == node).then_some(at))?;
+        Some(subject.assets.customers[at].origin)
+    })
+}

@@ -1,0 +1,87 @@
+//! Grading: the one place where a finding's final severity is set, after the hydraulics, by what the fault does to the
+//! answer.
+//!
+//! - A doubtful connection (near miss, crossing, zones kept apart) across which the heads differ by a metre or more, or
+//!   one of whose sides has no source, changes pressures if it is real: serious for a near miss that leaves a side
+//!   without source, else a warning. Where the heads agree to within a centimetre it changes little today: a near miss
+//!   stays a warning (redundancy is lost), but is listed after the others.
+//! - An assumed diameter on a main that carries water faster than the limit, or with more than a metre of head loss,
+//!   decides the answer: serious. On a main that carries next to nothing it is a note.
+
+use super::{Screened, Subject};
+use crate::finding::{Code, FeatureRef, Finding, Severity};
+
+/// Head loss along a main with an assumed bore that makes the assumption serious, m.
+const SERIOUS_LOSS_M: f64 = 1.0;
+/// Velocity below which a main carries next to nothing, m/s.
+const NEXT_TO_NOTHING_M_PER_S: f64 = 0.01;
+
+/// Sets final severities and puts the most serious first.
+pub fn grade(subject: &Subject<'_>, screened: &Screened, findings: &mut [Finding]) {
+    let mains: std::collections::HashMap<FeatureRef, usize> = subject
+        .assets
+        .mains
+        .iter()
+        .enumerate()
+        .map(|(at, main)| (main.origin, at))
+        .collect();
+    let use_of = MainUse::of(subject, screened);
+    for finding in findings.iter_mut() {
+        let main = finding.feature.and_then(|feature| mains.get(&feature).copied());
+        match (finding.code, main) {
+            (Code::DiameterMissing | Code::DiameterImpossible, Some(main)) => {
+                finding.severity = use_of.severity_of_assumption(main);
+            }
+            (Code::NearMiss, Some(main)) => {
+                let other = finding.others.iter().find_map(|other| mains.get(other).copied());
+                if other.is_some_and(|other| use_of.served[main] != use_of.served[other]) {
+                    finding.severity = Severity::Serious;
+                }
+            }
+            _ => {}
+        }
+    }
+    sort(findings);
+}
+
+/// Puts the most serious first, then by code, layer and row: the order does not depend on how findings were found.
+pub fn sort(findings: &mut [Finding]) {
+    findings.sort_by(|a, b| {
+        let key = |finding: &Finding| (std::cmp::Reverse(finding.severity), finding.code, finding.feature);
+        key(a).cmp(&key(b)).then_with(|| a.others.cmp(&b.others))
+    });
+}
+
+/// What each main does in the case where it works hardest.
+struct MainUse {
+    served: Vec<bool>,
+    velocity_m_per_s: Vec<f64>,
+    loss_m: Vec<f64>,
+}
+
+impl MainUse {
+    fn of(subject: &Subject<'_>, screened: &Screened) -> MainUse {
+        let mains = subject.assets.mains.len();
+        let mut found = MainUse {
+            served: vec![false; mains],
+            velocity_m_per_s: vec![0.0; mains],
+            loss_m: vec![0.0; mains],
+        };
+        for (at, verdict) in screened.parts.iter().enumerate() {
+            let main = subject.map.parts[at].main as usize;
+            let part = &subject.network.parts[at];
+            found.served[main] |= subject.network.served[part.from.at()];
+            found.velocity_m_per_s[main] = found.velocity_m_per_s[main].max(verdict.velocity.value.unwrap_or(0.0));
+            found.loss_m[main] += verdict.gradient.value.unwrap_or(0.0) * part.length_m;
+        }
+        found
+    }
+
+    fn severity_of_assumption(&self, main: usize) -> Severity {
+        match main {
+            main if self.served[main] && self.loss_m[main] > SERIOUS_LOSS_M => Severity::Serious,
+            main if self.served[main] && self.velocity_m_per_s[main] < NEXT_TO_NOTHING_M_PER_S => Severity::Note,
+            _ => Severity::Warning,
+        }
+    }
+}
