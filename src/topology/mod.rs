@@ -226,3 +226,8 @@ pub struct PipeMap {
     /// What each cleaning step did, in order.
     pub steps: Vec<StepCount>,
 }
+
+/// Assets in, pipe map out. Stands here until the room's own entry lands.
+pub fn infer(_assets: &crate::assets::Assets, _settings: &JoinSettings) -> crate::finding::Checked<PipeMap> {
+    unimplemented!()
+}
