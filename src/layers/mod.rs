@@ -5,6 +5,7 @@
 
 mod crs;
 mod layer;
+pub mod result_columns;
 
 pub use crs::{Crs, LocalPlane};
 pub use layer::{Cell, Column, Format, Layer, LayerSet, ReadOptions, Shape, Source};

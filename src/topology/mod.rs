@@ -207,6 +207,8 @@ pub struct PipeMap {
     pub parts: Vec<MapPart>,
     /// Cleaned lines.
     pub lines: Vec<CleanLine>,
+    /// Mains left out as copies of another: the copy, and the main that is calculated for both.
+    pub same_as: Vec<(u32, u32)>,
     /// Every join made or considered.
     pub joins: Vec<Join>,
     /// The node each of `Assets::nodes` stands on.
