@@ -1,40 +1,7 @@
 //! The solver's face: what is asked, what comes back.
 
+use super::{Residuals, Settings};
 use crate::network::{Condition, Network, NodeIx, PartIx};
-
-/// Every constant and tolerance of the hydraulics.
-#[derive(Clone, Debug, PartialEq)]
-pub struct Settings {
-    /// Hazen-Williams velocity form V = k C R^0.63 S^0.54 in SI: k. The published US 1.318 converted exactly is 0.84918.
-    pub hazen_williams_k: f64,
-    /// Exponent of flow in h = K L Q^n / (C^n D^m).
-    pub flow_exponent: f64,
-    /// Exponent of diameter, m.
-    pub diameter_exponent: f64,
-    /// Kinematic viscosity of water, m2/s.
-    pub viscosity_m2_per_s: f64,
-    /// Largest continuity residual accepted, m3/s.
-    pub continuity_m3_per_s: f64,
-    /// Largest head-loss residual accepted, m.
-    pub head_m: f64,
-    /// Newton steps after which it is said that the solution does not settle.
-    pub most_steps: u32,
-}
-
-/// How well written values satisfy the equations, recomputed from them.
-#[derive(Clone, Copy, Debug, PartialEq)]
-pub struct Residuals {
-    /// Largest sum of flows at a node, m3/s, and the node.
-    pub continuity_m3_per_s: f64,
-    /// The node where it is.
-    pub continuity_at: Option<NodeIx>,
-    /// Largest difference between head difference and head loss of a part, m.
-    pub head_m: f64,
-    /// The part where it is.
-    pub head_at: Option<PartIx>,
-    /// Largest relative head-loss residual (of the larger of head difference and 1e-8 m).
-    pub head_relative: f64,
-}
 
 /// A solution.
 #[derive(Clone, Debug, PartialEq)]
