@@ -2,6 +2,7 @@
 
 use std::f64::consts::PI;
 
+use super::linear::Factoring;
 use super::water::viscosity_m2_per_s;
 use crate::units::{GRAVITY_M_PER_S2, M_PER_FOOT};
 
@@ -61,6 +62,8 @@ pub struct Settings {
     pub head_m: f64,
     /// Newton steps after which it is said that the solution does not settle.
     pub most_steps: u32,
+    /// How the linear equations of a step are factored.
+    pub factoring: Factoring,
 }
 
 /// Temperature that the default viscosity belongs to, degrees Celsius: common practice for water in buried mains.
@@ -76,6 +79,7 @@ impl Default for Settings {
             continuity_m3_per_s: 1e-9,
             head_m: 1e-7,
             most_steps: 200,
+            factoring: Factoring::Excess,
         }
     }
 }

@@ -40,21 +40,40 @@ impl ResultColumn {
             return self.stem.to_string();
         }
         let room = LONGEST - 1 - suffix.len();
-        let stem = if self.stem.len() > room { &self.stem[..room] } else { self.stem };
+        let stem = if self.stem.len() > room {
+            &self.stem[..room]
+        } else {
+            self.stem
+        };
         format!("{stem}_{suffix}")
     }
 }
 
 const fn text(stem: &'static str, means: &'static str) -> ResultColumn {
-    ResultColumn { stem, quantity: Quantity::Plain, holds: Holds::Text, means }
+    ResultColumn {
+        stem,
+        quantity: Quantity::Plain,
+        holds: Holds::Text,
+        means,
+    }
 }
 
 const fn whole(stem: &'static str, means: &'static str) -> ResultColumn {
-    ResultColumn { stem, quantity: Quantity::Plain, holds: Holds::Whole, means }
+    ResultColumn {
+        stem,
+        quantity: Quantity::Plain,
+        holds: Holds::Whole,
+        means,
+    }
 }
 
 const fn real(stem: &'static str, quantity: Quantity, decimals: u8, means: &'static str) -> ResultColumn {
-    ResultColumn { stem, quantity, holds: Holds::Real(decimals), means }
+    ResultColumn {
+        stem,
+        quantity,
+        holds: Holds::Real(decimals),
+        means,
+    }
 }
 
 /// Decimals of values that a recheck starts from: far below the residuals that are accepted.
@@ -62,12 +81,25 @@ const EXACT: u8 = 10;
 
 /// Appended to each mains layer.
 pub const MAINS: &[ResultColumn] = &[
-    real("flow", Quantity::Flow, 4, "flow in the case of the highest velocity, positive along the drawn line; of the fastest part"),
-    real("vel", Quantity::Velocity, 4, "highest velocity in any case, of the fastest part"),
+    real(
+        "flow",
+        Quantity::Flow,
+        4,
+        "flow in the case of the highest velocity, positive along the drawn line; of the fastest part",
+    ),
+    real(
+        "vel",
+        Quantity::Velocity,
+        4,
+        "highest velocity in any case, of the fastest part",
+    ),
     text("vel_flag", "`ok`, `high` or `untested`"),
     text("vel_case", "the case of the highest velocity"),
     real("grad", Quantity::Gradient, 4, "steepest hydraulic gradient in any case"),
-    text("grad_flag", "`ok`, `high`, `untested` or `not judged` (a part under a metre)"),
+    text(
+        "grad_flag",
+        "`ok`, `high`, `untested` or `not judged` (a part under a metre)",
+    ),
     text("grad_case", "the case of the steepest gradient"),
     real("used", Quantity::Diameter, 3, "bore calculated with"),
     text("diam_basis", "where the bore came from"),
@@ -75,7 +107,10 @@ pub const MAINS: &[ResultColumn] = &[
     real("rough", Quantity::Roughness, 5, "roughness height calculated with"),
     text("c_basis", "where the C-factor or roughness came from"),
     whole("parts", "pieces it was calculated in"),
-    text("served", "`yes`, `unserved` (no source), `left out` (by a rule), `duplicate` or `not drawn`"),
+    text(
+        "served",
+        "`yes`, `unserved` (no source), `left out` (by a rule), `duplicate` or `not drawn`",
+    ),
 ];
 
 /// The parts layer.
@@ -95,7 +130,10 @@ pub const PARTS: &[ResultColumn] = &[
 
 /// The nodes layer.
 pub const NODES: &[ResultColumn] = &[
-    text("node", "its name: the id of the user's point that stands there, else `node` and a number"),
+    text(
+        "node",
+        "its name: the id of the user's point that stands there, else `node` and a number",
+    ),
     text("kind", "`node`, `source` or `tank`"),
     text("zone", "pressure zone, where the map names it"),
     real("elev", Quantity::Length, 4, "elevation"),
@@ -104,7 +142,12 @@ pub const NODES: &[ResultColumn] = &[
     real("pres", Quantity::Pressure, 6, "lowest pressure in any case"),
     text("low_flag", "`ok`, `low`, `untested` or `not judged`"),
     text("low_case", "the case of the lowest pressure"),
-    real("margin", Quantity::Pressure, 4, "lowest pressure less its limit: positive passes"),
+    real(
+        "margin",
+        Quantity::Pressure,
+        4,
+        "lowest pressure less its limit: positive passes",
+    ),
     real("pmax", Quantity::Pressure, 4, "pressure when nobody draws"),
     text("high_flag", "`ok`, `high` or `untested`"),
     text("high_case", "the case of the highest pressure"),
@@ -113,12 +156,27 @@ pub const NODES: &[ResultColumn] = &[
 /// Appended to each hydrants layer.
 pub const HYDRANTS: &[ResultColumn] = &[
     text("node", "node it taps"),
-    real("static", Quantity::Pressure, 4, "pressure in the fire case with no hydrant open"),
+    real(
+        "static",
+        Quantity::Pressure,
+        4,
+        "pressure in the fire case with no hydrant open",
+    ),
     real("need", Quantity::Flow, 4, "needed fire flow"),
     real("avail", Quantity::Flow, 6, "flow it can give at its own residual limit"),
-    real("safe", Quantity::Flow, 6, "flow at which the first limit anywhere is met"),
+    real(
+        "safe",
+        Quantity::Flow,
+        6,
+        "flow at which the first limit anywhere is met",
+    ),
     real("short", Quantity::Flow, 4, "how much of the needed flow is missing"),
-    real("at_need", Quantity::Pressure, 4, "pressure while it gives the needed flow; below zero: it cannot"),
+    real(
+        "at_need",
+        Quantity::Pressure,
+        4,
+        "pressure while it gives the needed flow; below zero: it cannot",
+    ),
     text("fire_flag", "`ok`, `short`, `unserved`, `untested` or `not judged`"),
     text("limit_by", "what limits it"),
     text("limit_at", "where"),
@@ -129,10 +187,20 @@ pub const HYDRANTS: &[ResultColumn] = &[
 pub const CUSTOMERS: &[ResultColumn] = &[
     text("on_main", "id of the main that serves it"),
     text("node", "node that its draw goes to"),
-    real("pres", Quantity::Pressure, 4, "lowest pressure at its highest tap in any case"),
+    real(
+        "pres",
+        Quantity::Pressure,
+        4,
+        "lowest pressure at its highest tap in any case",
+    ),
     text("low_flag", "`ok`, `low` or `untested`"),
     text("low_case", "the case of the lowest pressure"),
-    real("margin", Quantity::Pressure, 4, "lowest pressure less its limit: positive passes"),
+    real(
+        "margin",
+        Quantity::Pressure,
+        4,
+        "lowest pressure less its limit: positive passes",
+    ),
 ];
 
 /// The joins layer.
@@ -156,7 +224,12 @@ pub const DEVICES: &[ResultColumn] = &[
     text("state", "`closed`"),
     real("flow", Quantity::Flow, 4, "flow through it"),
     real("head_a", Quantity::Length, 4, "head on the one side, in the first case"),
-    real("head_b", Quantity::Length, 4, "head on the other side, in the first case"),
+    real(
+        "head_b",
+        Quantity::Length,
+        4,
+        "head on the other side, in the first case",
+    ),
 ];
 
 /// The findings layer.
@@ -181,7 +254,12 @@ pub const NODE_CASES: &[ResultColumn] = &[
     text("in_case", "the case"),
     real("head", Quantity::Length, EXACT, "head"),
     real("pres", Quantity::Pressure, EXACT, "pressure"),
-    real("out", Quantity::Flow, EXACT, "outflow: what is drawn there, less what a source feeds in"),
+    real(
+        "out",
+        Quantity::Flow,
+        EXACT,
+        "outflow: what is drawn there, less what a source feeds in",
+    ),
 ];
 
 /// The table of parts in each case.
@@ -190,7 +268,12 @@ pub const PART_CASES: &[ResultColumn] = &[
     text("in_case", "the case"),
     real("flow", Quantity::Flow, EXACT, "flow, positive along the drawn line"),
     real("vel", Quantity::Velocity, EXACT, "velocity"),
-    real("loss", Quantity::Length, EXACT, "head at its start less head at its end"),
+    real(
+        "loss",
+        Quantity::Length,
+        EXACT,
+        "head at its start less head at its end",
+    ),
     text("state", "`open`"),
 ];
 
@@ -217,7 +300,12 @@ mod tests {
         for system in [UnitSystem::Si, UnitSystem::Us] {
             for (layer, columns) in LAYERS {
                 let mut names: Vec<String> = columns.iter().map(|column| column.name(system)).collect();
-                assert!(names.iter().all(|name| name.len() <= LONGEST && *name == name.to_lowercase()), "{layer}: {names:?}");
+                assert!(
+                    names
+                        .iter()
+                        .all(|name| name.len() <= LONGEST && *name == name.to_lowercase()),
+                    "{layer}: {names:?}"
+                );
                 names.sort();
                 names.dedup();
                 assert_eq!(names.len(), columns.len(), "{layer}");
