@@ -63,7 +63,11 @@ impl Names {
 
     /// The user's id alone, if the feature has one.
     pub fn id(&self, feature: FeatureRef) -> Option<&str> {
-        self.layers.get(&feature.layer)?.ids.get(feature.row as usize)?.as_deref()
+        self.layers
+            .get(&feature.layer)?
+            .ids
+            .get(feature.row as usize)?
+            .as_deref()
     }
 
     /// What the features of a layer are.
