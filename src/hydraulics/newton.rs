@@ -16,7 +16,9 @@ const PATIENT_STEPS: u32 = 20;
 /// Steps allowed after the tolerances are met, to let the residuals fall as far as they will.
 const POLISHING_STEPS: u32 = 6;
 /// Relative head-loss residual at which there is nothing more to gain.
-const POLISHED: f64 = 1e-12;
+const POLISHED_HEAD: f64 = 1e-12;
+/// Continuity residual over the largest flow at which there is nothing more to gain: a few roundings.
+const POLISHED_CONTINUITY: f64 = 1e-15;
 
 /// A wish to hold something while a flow is drawn at one node; see `held.rs`.
 pub(super) trait Aim {
@@ -58,6 +60,8 @@ pub(super) struct Newton<'a> {
     worst_head: f64,
     worst_relative: f64,
     worst_continuity: f64,
+    largest_flow: f64,
+    largest_drop: f64,
 }
 
 /// The method stopped after so many steps without having settled.
@@ -96,6 +100,8 @@ impl<'a> Newton<'a> {
             worst_head: f64::INFINITY,
             worst_relative: f64::INFINITY,
             worst_continuity: f64::INFINITY,
+            largest_flow: 0.0,
+            largest_drop: 0.0,
         }
     }
 
@@ -119,17 +125,22 @@ impl<'a> Newton<'a> {
     pub fn settle(&mut self, settings: &Settings, mut aim: Option<&mut dyn Aim>) -> Result<u32, Stopped> {
         self.measure_heads();
         let mut polished = 0;
-        let mut before = f64::INFINITY;
+        let mut before = (f64::INFINITY, f64::INFINITY);
         for steps in 0..=settings.most_steps {
             self.assemble(aim.as_deref().map(|aim| aim.drawn_at()));
-            let met = self.worst_head <= settings.head_m && self.worst_continuity <= settings.continuity_m3_per_s;
+            // A head of a million kilometres, which a wrong diameter can ask for, is rounded by more than the tolerance:
+            // there is nothing to gain by going on, and the residuals of the answer will tell.
+            let head_m = settings.head_m.max(2.0 * f64::EPSILON * self.largest_drop);
+            let met = self.worst_head <= head_m && self.worst_continuity <= settings.continuity_m3_per_s;
             if met && steps > 0 {
-                let falls = self.worst_relative < 0.5 * before;
-                if self.worst_relative <= POLISHED || !falls || polished == POLISHING_STEPS {
+                let done = self.worst_relative <= POLISHED_HEAD
+                    && self.worst_continuity <= POLISHED_CONTINUITY * self.largest_flow;
+                let falls = self.worst_relative < 0.5 * before.0 || self.worst_continuity < 0.5 * before.1;
+                if done || !falls || polished == POLISHING_STEPS {
                     return Ok(steps);
                 }
                 polished += 1;
-                before = self.worst_relative;
+                before = (self.worst_relative, self.worst_continuity);
             }
             if steps == settings.most_steps {
                 break;
@@ -259,6 +270,7 @@ impl<'a> Newton<'a> {
     fn try_share(&mut self, share: f64) -> f64 {
         let [flows, losses, slopes] = &mut self.trial;
         let (mut slope_there, mut worst, mut worst_relative) = (0.0, 0.0, 0.0);
+        let (mut largest_flow, mut largest_drop) = (0.0_f64, 0.0_f64);
         for (at, law) in self.edges.law.iter().enumerate() {
             let flow = self.flow[at] + share * self.step[at];
             let loss = law.at(flow);
@@ -269,6 +281,8 @@ impl<'a> Newton<'a> {
                 worst_relative,
                 (rest / loss.head_m.abs().max(super::STRAIGHT_BELOW_M)).abs(),
             );
+            largest_flow = largest_flow.max(flow.abs());
+            largest_drop = largest_drop.max(self.drop[at].abs());
             self.rest[at] = rest;
             flows[at] = flow;
             losses[at] = loss.head_m;
@@ -276,6 +290,8 @@ impl<'a> Newton<'a> {
         }
         self.worst_head = worst;
         self.worst_relative = worst_relative;
+        self.largest_flow = largest_flow;
+        self.largest_drop = largest_drop;
         slope_there
     }
 

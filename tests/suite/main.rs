@@ -1,1 +1,5 @@
 //! The one test binary. Each module is one kind of test.
+
+mod hydraulic;
+mod numbers;
+mod properties;
