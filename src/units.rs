@@ -13,6 +13,8 @@ pub const M_PER_INCH: f64 = 0.0254;
 pub const M_PER_FOOT: f64 = 0.3048;
 /// Metres in a US survey foot, 1200/3937 (exact).
 pub const M_PER_US_SURVEY_FOOT: f64 = 1200.0 / 3937.0;
+/// Metres in a millimetre (exact).
+pub const M_PER_MM: f64 = 1e-3;
 /// Cubic metres in a US gallon (exact, 231 cubic inches).
 pub const M3_PER_US_GALLON: f64 = 0.003_785_411_784;
 /// Cubic metres in an imperial gallon (exact).

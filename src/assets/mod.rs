@@ -2,19 +2,34 @@
 //!
 //! After this room nobody but `report` and `study` sees a layer or a column name.
 
+mod cells;
+mod columns;
+mod customers;
+mod desk;
+mod drawings;
+mod hydrants;
+mod mains;
+mod materials;
 mod names;
+mod nodes;
+mod read;
 mod reading;
+mod selection;
+mod sentinels;
 mod settings;
+mod supply;
+mod valves;
+mod words;
 
 pub use names::{Names, Role};
+pub use read::{read, wanted_columns};
 pub use reading::{Fillers, LeftOut, Reading, UnitFrom, UnitUsed};
 pub use settings::{
     AssetSettings, CustomersColumns, DiameterIs, FrictionLaw, HydrantsColumns, LayerColumns, LeaveOut, LengthFrom,
     MainsColumns, NodesColumns, NumberOrColumn, SourceAt, StudySource, UnitColumn, ValvesColumns,
 };
 
-use crate::finding::{Checked, Error, FeatureRef};
-use crate::layers::{LayerSet, LocalPlane};
+use crate::finding::FeatureRef;
 
 /// A place in the local plane, m: x to the east, y to the north.
 pub type Point = [f64; 2];
@@ -256,13 +271,4 @@ pub struct Assets {
     pub classes: Vec<String>,
     /// How far points may lie from their mains.
     pub reach: Reach,
-}
-
-/// Reads the columns of every layer of the study.
-///
-/// # Errors
-/// A column that a layer does not have, a unit that cannot be told, a layer that lies nowhere near the mains, a device
-/// that this version does not calculate: each with the layer, the column or the feature, and what to do.
-pub fn read(_set: &LayerSet, _settings: &AssetSettings, _plane: &LocalPlane) -> Result<Checked<Reading>, Error> {
-    unimplemented!()
 }

@@ -70,6 +70,11 @@ impl Names {
             .as_deref()
     }
 
+    /// Whether the study names an id column for a layer.
+    pub(super) fn has_ids(&self, layer: u16) -> bool {
+        self.layers.get(&layer).is_some_and(|names| !names.ids.is_empty())
+    }
+
     /// What the features of a layer are.
     pub fn role(&self, layer: u16) -> Option<Role> {
         self.layers.get(&layer).map(|names| names.role)

@@ -8,10 +8,12 @@
 
 mod code;
 mod error;
+mod nearest;
 mod sentence;
 
 pub use code::{About, Code, CodeText};
 pub use error::Error;
+pub use nearest::nearest;
 pub use sentence::{Piece, Sentence};
 
 use crate::units::Quantity;

@@ -1,0 +1,165 @@
+//! Node points: fittings, tanks, wells, anything with a known head, elevation or demand.
+
+use super::columns::{self, Slot, Wanted};
+use super::desk::{Desk, features};
+use super::selection::by_word;
+use super::sentinels::Meaning;
+use super::settings::{NodesColumns, UnitColumn};
+use super::{Basis, NodeKind, NodePoint, Role, Valued, cells, words};
+use crate::finding::{Code, Error, FeatureRef, Finding, Sentence, Severity};
+use crate::units::Quantity;
+
+impl Desk<'_> {
+    /// Reads a layer of node points.
+    pub fn read_nodes(&mut self, wanted: &NodesColumns) -> Result<Vec<NodePoint>, Error> {
+        let layer = wanted.common.layer;
+        self.read_ids(&wanted.common, Role::Node)?;
+        let taking_part = self.select(&wanted.common, Role::Node, true)?;
+        let points = self.read_points(layer, &taking_part, Role::Node)?;
+        let kinds = self.node_kinds(wanted, &taking_part)?;
+        let elevations = self.elevations(layer, wanted.elevation.as_ref(), Role::Node, &taking_part)?;
+        let heads = self.lengths(layer, "head", wanted.head.as_ref(), Meaning::Head, &taking_part)?;
+        let demands = self.demands(layer, wanted.demand.as_ref(), &taking_part)?;
+        let zones = self.read_zones(&wanted.common)?;
+        let rows = (0..taking_part.len()).filter(|row| taking_part[*row]);
+        let nodes: Vec<NodePoint> = rows
+            .map(|row| NodePoint {
+                origin: Some(FeatureRef { layer, row: row as u32 }),
+                at: points[row],
+                kind: kinds[row],
+                elevation_m: elevations[row].map(|value| Valued {
+                    value,
+                    basis: Basis::Map,
+                }),
+                head_m: heads[row].map(|value| Valued {
+                    value,
+                    basis: Basis::Map,
+                }),
+                demand_m3_per_s: demands[row],
+                greatest_m3_per_s: None,
+                zone: zones[row],
+            })
+            .collect();
+        self.check_ids(&features(layer, &taking_part), Role::Node);
+        Ok(nodes)
+    }
+
+    fn node_kinds(&mut self, wanted: &NodesColumns, taking_part: &[bool]) -> Result<Vec<NodeKind>, Error> {
+        let layer = wanted.common.layer;
+        let mut kinds = vec![NodeKind::Node; taking_part.len()];
+        let Some(column) = self.maybe_column(layer, "kind", wanted.kind.as_ref())? else {
+            return Ok(kinds);
+        };
+        let mut unknown = Vec::new();
+        for (row, cell) in column.cells.iter().enumerate().filter(|(row, _)| taking_part[*row]) {
+            let Some(text) = cells::text(cell) else { continue };
+            match words::node_kind(&text) {
+                Some(kind) => kinds[row] = kind,
+                None => unknown.push((text, FeatureRef { layer, row: row as u32 })),
+            }
+        }
+        for (word, features) in by_word(unknown) {
+            let said = format!(
+                "{} nodes have the kind `{word}`, which is not known here; they count as plain nodes",
+                features.len()
+            );
+            self.report_together(Code::ValueUnreadable, Severity::Note, &features, said.into());
+        }
+        Ok(kinds)
+    }
+
+    /// Elevations, m, by row. Node points without one are said, together.
+    pub fn elevations(
+        &mut self,
+        layer: u16,
+        column: Option<&UnitColumn>,
+        role: Role,
+        taking_part: &[bool],
+    ) -> Result<Vec<Option<f64>>, Error> {
+        let elevations = self.lengths(layer, "elevation", column, Meaning::Elevation, taking_part)?;
+        if column.is_some() && role == Role::Node {
+            let rows = (0..taking_part.len()).filter(|row| taking_part[*row] && elevations[*row].is_none());
+            let without: Vec<FeatureRef> = rows.map(|row| FeatureRef { layer, row: row as u32 }).collect();
+            let said = match without.as_slice() {
+                [one] => Sentence::new().feature(*one).text(" has no elevation"),
+                many => format!("{} nodes have no elevation", many.len()).into(),
+            };
+            self.report_together(Code::ElevationMissing, Severity::Note, &without, said);
+        }
+        Ok(elevations)
+    }
+
+    /// A column of lengths, m, by row; `None` for every row when the study names none.
+    pub fn lengths(
+        &mut self,
+        layer: u16,
+        key: &'static str,
+        column: Option<&UnitColumn>,
+        meaning: Meaning,
+        taking_part: &[bool],
+    ) -> Result<Vec<Option<f64>>, Error> {
+        self.optional(layer, key, column, Quantity::Length, meaning, taking_part)
+    }
+
+    /// A column of numbers in SI, by row; `None` for every row when the study names none.
+    pub fn optional(
+        &mut self,
+        layer: u16,
+        key: &'static str,
+        column: Option<&UnitColumn>,
+        quantity: Quantity,
+        meaning: Meaning,
+        taking_part: &[bool],
+    ) -> Result<Vec<Option<f64>>, Error> {
+        let Some(column) = column else {
+            return Ok(vec![None; taking_part.len()]);
+        };
+        let wanted = Wanted {
+            layer,
+            key,
+            column,
+            quantity,
+            meaning,
+            taking_part,
+        };
+        let read = self.read_numbers(&wanted, |_| None)?;
+        Ok(read.slots.iter().map(Slot::value).collect())
+    }
+
+    /// Average-day demands, m3/s, not below zero. Negative ones are said, and fillers that look like a demand.
+    pub fn demands(
+        &mut self,
+        layer: u16,
+        column: Option<&UnitColumn>,
+        taking_part: &[bool],
+    ) -> Result<Vec<f64>, Error> {
+        let read = self.optional(layer, "demand", column, Quantity::Flow, Meaning::Demand, taking_part)?;
+        let mut negative = Vec::new();
+        let demands = read.iter().enumerate().map(|(row, demand)| {
+            let value = demand.unwrap_or(0.0);
+            if value < 0.0 && taking_part[row] {
+                let feature = FeatureRef { layer, row: row as u32 };
+                let said = Sentence::new()
+                    .feature(feature)
+                    .text(" has a demand of ")
+                    .number(value, Quantity::Flow);
+                negative.push(
+                    Finding::new(Code::DemandNegative, said)
+                        .on(feature)
+                        .measured(value, Quantity::Flow),
+                );
+            }
+            value.max(0.0)
+        });
+        let demands = demands.collect();
+        self.report(negative, |count| format!("{count} demands are below zero").into());
+        Ok(demands)
+    }
+}
+
+/// Every name of a column that a nodes layer is read by.
+pub(super) fn wanted_columns(wanted: &NodesColumns) -> Vec<String> {
+    let with_unit = [&wanted.elevation, &wanted.head, &wanted.demand].into_iter().flatten();
+    let names = with_unit.map(|column| column.column.clone()).chain(wanted.kind.clone());
+    names.chain(columns::common(&wanted.common)).collect()
+}

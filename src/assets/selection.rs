@@ -1,0 +1,109 @@
+//! Which rows take part: by the study's `leave_out`, and by the words of a `status` column. What is left out is counted and
+//! listed.
+
+use super::columns::{as_compared, compared_cell};
+use super::desk::Desk;
+use super::reading::LeftOut;
+use super::settings::LayerColumns;
+use super::words::{Use, use_of};
+use super::{Role, cells};
+use crate::finding::{Code, Error, FeatureRef, Sentence, Severity};
+
+impl Desk<'_> {
+    /// Which rows of a layer take part. `status_is_use`: whether words that are unknown as a status are to be said (a valve's
+    /// status says whether it is shut).
+    pub fn select(&mut self, common: &LayerColumns, role: Role, status_is_use: bool) -> Result<Vec<bool>, Error> {
+        let mut taking_part = vec![true; self.layer(common.layer).rows() as usize];
+        self.leave_out(common, &mut taking_part)?;
+        if let Some(name) = &common.status {
+            let column = self.column(common.layer, "status", name)?;
+            let mut unknown: Vec<(String, FeatureRef)> = Vec::new();
+            let mut out: Vec<(String, FeatureRef)> = Vec::new();
+            for (row, cell) in column.cells.iter().enumerate().filter(|(row, _)| taking_part[*row]) {
+                let feature = FeatureRef {
+                    layer: common.layer,
+                    row: row as u32,
+                };
+                let Some(text) = cells::text(cell) else { continue };
+                match use_of(&text) {
+                    Use::NotInUse => out.push((text, feature)),
+                    Use::Unknown => unknown.push((text, feature)),
+                    Use::InUse => {}
+                }
+            }
+            for (word, features) in by_word(out) {
+                self.take_out(&mut taking_part, format!("`{}` is {word}", column.name), features);
+            }
+            if status_is_use {
+                for (word, features) in by_word(unknown) {
+                    let said = format!(
+                        "{} {}s have the status `{word}`, which is not known here; they take part",
+                        features.len(),
+                        role.word()
+                    );
+                    self.report_together(Code::ValueUnreadable, Severity::Note, &features, said.into());
+                }
+            }
+        }
+        Ok(taking_part)
+    }
+
+    fn leave_out(&mut self, common: &LayerColumns, taking_part: &mut [bool]) -> Result<(), Error> {
+        for rule in &common.leave_out {
+            let column = self.column(common.layer, "leave_out", &rule.column)?;
+            let values = as_compared(&rule.values);
+            let mut out = Vec::new();
+            for (row, cell) in column.cells.iter().enumerate().filter(|(row, _)| taking_part[*row]) {
+                if values.contains(&compared_cell(cell)) {
+                    let text = cells::text(cell).unwrap_or_else(|| "empty".to_string());
+                    out.push((
+                        text,
+                        FeatureRef {
+                            layer: common.layer,
+                            row: row as u32,
+                        },
+                    ));
+                }
+            }
+            for (word, features) in by_word(out) {
+                self.take_out(taking_part, format!("`{}` is {word}", column.name), features);
+            }
+        }
+        Ok(())
+    }
+
+    /// Takes features out by a rule, and keeps the list.
+    pub fn take_out(&mut self, taking_part: &mut [bool], rule: String, features: Vec<FeatureRef>) {
+        for feature in &features {
+            taking_part[feature.row as usize] = false;
+        }
+        self.left_out.push(LeftOut { rule, features });
+    }
+
+    /// Says which mains were left out, a finding a rule.
+    pub fn say_left_out(&mut self) {
+        let rules = std::mem::take(&mut self.left_out);
+        for rule in &rules {
+            if self.names.role(rule.features[0].layer) != Some(Role::Main) {
+                continue;
+            }
+            let said = Sentence::new().text(format!("{} mains are left out: {}", rule.features.len(), rule.rule));
+            self.report_together(Code::MainsLeftOut, Severity::Note, &rule.features, said);
+        }
+        self.left_out = rules;
+    }
+}
+
+/// Features by word, in the order that the words first appear; spellings that differ in case alone are one word.
+pub(super) fn by_word(found: Vec<(String, FeatureRef)>) -> Vec<(String, Vec<FeatureRef>)> {
+    let mut words: Vec<(String, Vec<FeatureRef>)> = Vec::new();
+    let mut place: std::collections::HashMap<String, usize> = std::collections::HashMap::new();
+    for (word, feature) in found {
+        let at = *place.entry(word.to_lowercase()).or_insert_with(|| {
+            words.push((word, Vec::new()));
+            words.len() - 1
+        });
+        words[at].1.push(feature);
+    }
+    words
+}
