@@ -151,21 +151,21 @@ pub(super) fn text(cell: &Cell) -> Option<String> {
 
 /// A cell as a year: a number, or the year in a date such as `1987-03-01`, `19870301` or `03/1987`.
 pub(super) fn year(cell: &Cell) -> Number {
-    let read = number(cell, Quantity::Plain);
-    match read {
-        // A date written as one number.
-        Number::Value(value, _) if (1_000_00_00.0..10_000_00_00.0).contains(&value) => {
-            Number::Value((value / 1_00_00.0).floor(), None)
-        }
-        Number::Unreadable(text) => {
-            let mut groups = text.split(|c: char| !c.is_ascii_digit());
-            match groups.find(|group| group.len() == 4) {
-                Some(group) => Number::Value(group.parse().expect("four digits"), None),
-                None => Number::Unreadable(text),
-            }
-        }
-        other => other,
-    }
+    let dated = match cell {
+        Cell::Text(text) => year_in(text),
+        Cell::Whole(value) if value.to_string().len() == DATE_DIGITS => year_in(&value.to_string()),
+        _ => None,
+    };
+    dated.map_or_else(|| number(cell, Quantity::Plain), |year| Number::Value(year, None))
+}
+
+/// Digits of a date written as one number: year, month and day.
+const DATE_DIGITS: usize = 8;
+
+fn year_in(text: &str) -> Option<f64> {
+    let mut groups = text.split(|letter: char| !letter.is_ascii_digit());
+    let group = groups.find(|group| group.len() == 4 || group.len() == DATE_DIGITS)?;
+    group[..4].parse().ok()
 }
 
 #[cfg(test)]
@@ -222,21 +222,9 @@ mod tests {
     fn years_are_found_in_dates() {
         let year_of = |text: &str| year(&Cell::Text(text.into()));
         assert_eq!(year_of("1987-03-01"), Number::Value(1987.0, None));
-        assert_eq!(
-            year_of("03/1987"),
-            Number::Unreadable("03/1987".into()).clone().min_year()
-        );
-        assert_eq!(year(&Cell::Whole(19870301)), Number::Value(1987.0, None));
+        assert_eq!(year_of("03/1987"), Number::Value(1987.0, None));
+        assert_eq!(year(&Cell::Whole(19_870_301)), Number::Value(1987.0, None));
         assert_eq!(year_of("before the war"), Number::Unreadable("before the war".into()));
-    }
-
-    impl Number {
-        fn min_year(self) -> Number {
-            match self {
-                Number::Unreadable(text) if text == "03/1987" => Number::Value(1987.0, None),
-                other => other,
-            }
-        }
     }
 
     #[test]

@@ -450,17 +450,20 @@ fn tidy(value: f64) -> f64 {
     }
 }
 
+/// Whether a number is a nominal size in some unit.
+type IsSize = fn(f64) -> bool;
+
 /// The layer's sizes, to know a row that fits the other unit only.
 struct OddSizes {
     nearly_all_sizes: bool,
-    is_own: fn(f64) -> bool,
-    is_other: fn(f64) -> bool,
+    is_own: IsSize,
+    is_other: IsSize,
     other: &'static str,
 }
 
 impl OddSizes {
     fn of(bare: &[Option<f64>], unit: Unit) -> Option<OddSizes> {
-        let (is_own, is_other, other): (fn(f64) -> bool, fn(f64) -> bool, _) = match unit.name {
+        let (is_own, is_other, other): (IsSize, IsSize, _) = match unit.name {
             "mm" => (is_size_mm, is_size_in, "in"),
             "in" => (is_size_in, is_size_mm, "mm"),
             _ => return None,

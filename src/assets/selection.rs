@@ -26,9 +26,9 @@ impl Desk<'_> {
                 };
                 let Some(text) = cells::text(cell) else { continue };
                 match use_of(&text) {
-                    Use::NotInUse => out.push((text, feature)),
+                    Use::Gone => out.push((text, feature)),
                     Use::Unknown => unknown.push((text, feature)),
-                    Use::InUse => {}
+                    Use::Live => {}
                 }
             }
             for (word, features) in by_word(out) {

@@ -54,8 +54,8 @@ const IN_USE: &[&str] = &[
 /// What a status of a main, node, hydrant or customer says.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub(super) enum Use {
-    InUse,
-    NotInUse,
+    Live,
+    Gone,
     Unknown,
 }
 
@@ -73,9 +73,9 @@ pub(super) fn plain(text: &str) -> String {
 pub(super) fn use_of(text: &str) -> Use {
     let said = plain(text);
     if NOT_IN_USE.contains(&said.as_str()) {
-        Use::NotInUse
+        Use::Gone
     } else if IN_USE.contains(&said.as_str()) {
-        Use::InUse
+        Use::Live
     } else {
         Use::Unknown
     }
@@ -270,9 +270,9 @@ mod tests {
 
     #[test]
     fn statuses() {
-        assert_eq!(use_of("ABANDONED"), Use::NotInUse);
-        assert_eq!(use_of("Out-of-Service"), Use::NotInUse);
-        assert_eq!(use_of("In Service"), Use::InUse);
+        assert_eq!(use_of("ABANDONED"), Use::Gone);
+        assert_eq!(use_of("Out-of-Service"), Use::Gone);
+        assert_eq!(use_of("In Service"), Use::Live);
         assert_eq!(use_of("purple"), Use::Unknown);
     }
 
