@@ -1,0 +1,533 @@
+//! From the tables of a study file to the settings of each stage.
+
+use std::path::Path;
+use std::time::{SystemTime, UNIX_EPOCH};
+
+use super::keys::{Section, StudyFile};
+use super::{CaseSettings, FireSettings, LayerFile, Study, tables};
+use crate::assets::{
+    AssetSettings, Basis, CustomersColumns, DiameterIs, FrictionLaw, HydrantsColumns, LayerColumns, LengthFrom,
+    MainsColumns, NodesColumns, Reach, Role, StudySource, Valued, ValvesColumns,
+};
+use crate::finding::{Error, nearest};
+use crate::hydraulics::{self, viscosity_m2_per_s};
+use crate::screening::{Fire, Limit, Limits};
+use crate::topology::{JoinSettings, ZoneContact};
+use crate::units::{M_PER_MM, UnitSystem};
+
+/// Farthest that anything may be looked for or joined over, m: beyond it a study has a wrong unit.
+const FARTHEST_M: f64 = 10_000.0;
+/// Elevations and heads on Earth with a wide margin, m.
+const HEADS_M: std::ops::RangeInclusive<f64> = -1_000.0..=20_000.0;
+/// Pressures, m: up to what no main is made for.
+const PRESSURES_M: std::ops::RangeInclusive<f64> = 0.0..=1_000.0;
+/// Flows, m3/s: up to a large river's.
+const FLOWS_M3_PER_S: std::ops::RangeInclusive<f64> = 0.0..=1_000.0;
+/// Any number that is not below zero.
+const NOT_BELOW_ZERO: std::ops::RangeInclusive<f64> = 0.0..=f64::INFINITY;
+/// C-factor of a main about which nothing is known. Common practice, no source.
+const DEFAULT_C: f64 = 100.0;
+/// Roughness height of a main about which nothing is known: DVGW W 302 for a network of mains with its fittings, from memory.
+const DEFAULT_ROUGHNESS_M: f64 = 0.4 * M_PER_MM;
+/// How far points may lie from their mains when the study does not say, m. Common practice, no source.
+const DEFAULT_REACH: Reach = Reach {
+    hydrants_m: 10.0,
+    customers_m: 60.0,
+    valves_m: 2.0,
+};
+
+pub(super) fn parse(path: &Path, text: &str) -> Result<Study, Error> {
+    let (file, values) = StudyFile::parse(path, text)?;
+    let empty = toml::Table::new();
+    let top = Section::top(&file, &tables::TOP, &values)?;
+    let stem = path
+        .file_stem()
+        .map_or_else(String::new, |stem| stem.to_string_lossy().into_owned());
+    let title = top.text("title")?.unwrap_or(stem);
+    let results_in = match top.choice("results_in")? {
+        Some("us") => UnitSystem::Us,
+        _ => UnitSystem::Si,
+    };
+    let friction = top.section("friction", &empty)?;
+    let law = law(&friction)?;
+    let hydraulics = hydraulics_settings(&friction, law)?;
+    let mut layers = Layers {
+        folder: path.parent().unwrap_or(Path::new("")),
+        files: Vec::new(),
+    };
+    let mut assets = AssetSettings {
+        mains: read_mains(&top, &mut layers, law)?,
+        nodes: read_nodes(&top, &mut layers)?,
+        hydrants: Vec::new(),
+        customers: Vec::new(),
+        valves: Vec::new(),
+        sources: sources(&top)?,
+        law,
+        default_c_factor: or_assumed(friction.plain("default_c", 20.0..=165.0)?, DEFAULT_C),
+        default_roughness_m: or_assumed(
+            friction.number("default_roughness", 0.0..=30.0 * M_PER_MM)?,
+            DEFAULT_ROUGHNESS_M,
+        ),
+        age_in_year: friction
+            .plain("age_in_year", 1_800.0..=3_000.0)?
+            .map_or_else(this_year, |year| year as i32),
+        hydrants_at_own_elevation: true,
+        reach: DEFAULT_REACH,
+    };
+    (assets.hydrants, assets.reach.hydrants_m) = read_hydrants(&top, &mut layers)?;
+    (assets.customers, assets.reach.customers_m) = read_customers(&top, &mut layers)?;
+    (assets.valves, assets.reach.valves_m) = read_valves(&top, &mut layers)?;
+    let joining = joining(&top.section("joining", &empty)?)?;
+    let limits = limits(&top.section("limits", &empty)?, &Limits::default())?;
+    let cases = cases(&top, &limits)?;
+    let fire = match top.sections("fire")?.pop() {
+        Some(section) => Some(fire(&section, &cases, &mut assets)?),
+        None => None,
+    };
+    Ok(Study {
+        path: path.to_path_buf(),
+        title,
+        results_in,
+        layers: layers.files,
+        assets,
+        joining,
+        hydraulics,
+        cases,
+        fire,
+        limits,
+        used: file.into_used(),
+    })
+}
+
+fn or_assumed(given: Option<f64>, usual: f64) -> Valued<f64> {
+    match given {
+        Some(value) => Valued {
+            value,
+            basis: Basis::Study,
+        },
+        None => Valued {
+            value: usual,
+            basis: Basis::Assumed,
+        },
+    }
+}
+
+/// The calendar year by the clock, to within the leap days' drift.
+fn this_year() -> i32 {
+    const SECONDS_PER_YEAR: u64 = 31_556_952;
+    let since_1970 = SystemTime::now()
+        .duration_since(UNIX_EPOCH)
+        .map_or(0, |since| since.as_secs());
+    1970 + (since_1970 / SECONDS_PER_YEAR) as i32
+}
+
+/// The files of the layers, in the order of their indices.
+struct Layers<'a> {
+    folder: &'a Path,
+    files: Vec<LayerFile>,
+}
+
+impl Layers<'_> {
+    /// Adds a layer, and reads what every layer has.
+    fn add(&mut self, section: &Section<'_>, role: Role) -> Result<LayerColumns, Error> {
+        let from = section.needed_text("from", &format!("from = \"{}s.geojson\"", role.word()))?;
+        if let Some((file, name)) = from.split_once('#') {
+            let what = format!(
+                "{} names the layer `{name}` of {file}, a file of several layers",
+                section.called("from")
+            );
+            return Err(section.error(
+                "from",
+                what,
+                "This version reads GeoJSON and shapefile: export the layer to one of them.",
+            ));
+        }
+        let layer = u16::try_from(self.files.len()).map_err(|_| {
+            section.error(
+                "from",
+                "there are more than 65,536 layers".into(),
+                "Merge some of them.",
+            )
+        })?;
+        self.files.push(LayerFile {
+            path: self.folder.join(from),
+            role,
+            encoding: section.text("encoding")?,
+        });
+        Ok(LayerColumns {
+            layer,
+            id: section.text("id")?,
+            zone: section.text("zone")?,
+            status: section.text("status")?,
+            leave_out: section.marks("leave_out")?,
+        })
+    }
+}
+
+fn read_mains(top: &Section<'_>, layers: &mut Layers<'_>, law: FrictionLaw) -> Result<Vec<MainsColumns>, Error> {
+    let sections = top.sections("mains")?;
+    if sections.is_empty() {
+        return Err(top.missing("mains", "[mains]` with `from = \"mains.geojson\""));
+    }
+    sections
+        .iter()
+        .map(|section| mains_layer(section, layers, law))
+        .collect()
+}
+
+fn mains_layer(section: &Section<'_>, layers: &mut Layers<'_>, law: FrictionLaw) -> Result<MainsColumns, Error> {
+    let columns = MainsColumns {
+        common: layers.add(section, Role::Main)?,
+        diameter: section.unit_column("diameter")?,
+        diameter_is: match section.choice("diameter_is")? {
+            Some("nominal") => DiameterIs::Nominal,
+            Some("outside") => DiameterIs::Outside,
+            _ => DiameterIs::Inside,
+        },
+        c_factor: section.text("c_factor")?,
+        roughness: section.unit_column("roughness")?,
+        minor_loss: section.text("minor_loss")?,
+        material: section.text("material")?,
+        year: section.text("year")?,
+        length: section.unit_column("length")?,
+        length_from: match section.choice("length_from")? {
+            Some("stored") => LengthFrom::Stored,
+            _ => LengthFrom::Drawn,
+        },
+        kind: section.text("kind")?,
+    };
+    let unused = match (law, &columns.c_factor, &columns.roughness) {
+        (FrictionLaw::DarcyWeisbach, Some(_), None) => Some(("c_factor", "darcy-weisbach", "roughness")),
+        (FrictionLaw::HazenWilliams, None, Some(_)) => Some(("roughness", "hazen-williams", "c_factor")),
+        _ => None,
+    };
+    if let Some((key, law, other)) = unused {
+        let what = format!("{} is not used by the friction law {law}", section.called(key));
+        let todo = format!(
+            "Name a `{other}` column (both may stand there), take the other `law`, or leave the key out: material and age decide then."
+        );
+        return Err(section.error(key, what, todo));
+    }
+    if columns.length_from == LengthFrom::Stored && columns.length.is_none() {
+        let what = format!(
+            "{} is \"stored\", but no `length` column is named",
+            section.called("length_from")
+        );
+        return Err(section.error("length_from", what, "Add `length = \"...\"`."));
+    }
+    if columns.diameter_is == DiameterIs::Outside && columns.material.is_none() {
+        let what = format!(
+            "{} is \"outside\", but no `material` column is named to tell the wall by",
+            section.called("diameter_is")
+        );
+        return Err(section.error("diameter_is", what, "Add `material = \"...\"`, or give the bore."));
+    }
+    Ok(columns)
+}
+
+fn read_nodes(top: &Section<'_>, layers: &mut Layers<'_>) -> Result<Vec<NodesColumns>, Error> {
+    let sections = top.sections("nodes")?;
+    let read = sections.iter().map(|section| {
+        Ok(NodesColumns {
+            common: layers.add(section, Role::Node)?,
+            kind: section.text("kind")?,
+            elevation: section.unit_column("elevation")?,
+            head: section.unit_column("head")?,
+            demand: section.unit_column("demand")?,
+        })
+    });
+    read.collect()
+}
+
+fn read_hydrants(top: &Section<'_>, layers: &mut Layers<'_>) -> Result<(Vec<HydrantsColumns>, f64), Error> {
+    let sections = top.sections("hydrants")?;
+    let mut reach = OneReach::new(DEFAULT_REACH.hydrants_m);
+    let read = sections.iter().map(|section| {
+        reach.read(section)?;
+        Ok(HydrantsColumns {
+            common: layers.add(section, Role::Hydrant)?,
+            elevation: section.unit_column("elevation")?,
+            needed_flow: section.unit_column("needed_flow")?,
+        })
+    });
+    Ok((read.collect::<Result<_, Error>>()?, reach.reach_m))
+}
+
+fn read_customers(top: &Section<'_>, layers: &mut Layers<'_>) -> Result<(Vec<CustomersColumns>, f64), Error> {
+    let sections = top.sections("customers")?;
+    let mut reach = OneReach::new(DEFAULT_REACH.customers_m);
+    let read = sections.iter().map(|section| {
+        reach.read(section)?;
+        Ok(CustomersColumns {
+            common: layers.add(section, Role::Customer)?,
+            demand: section.unit_column("demand")?,
+            class: section.text("class")?,
+            elevation: section.unit_column("elevation")?,
+            lift: section.number_or_column("lift")?,
+        })
+    });
+    Ok((read.collect::<Result<_, Error>>()?, reach.reach_m))
+}
+
+fn read_valves(top: &Section<'_>, layers: &mut Layers<'_>) -> Result<(Vec<ValvesColumns>, f64), Error> {
+    let sections = top.sections("valves")?;
+    let mut reach = OneReach::new(DEFAULT_REACH.valves_m);
+    let read = sections.iter().map(|section| {
+        reach.read(section)?;
+        Ok(ValvesColumns {
+            common: layers.add(section, Role::Valve)?,
+            kind: section.text("kind")?,
+            main: section.text("main")?,
+        })
+    });
+    Ok((read.collect::<Result<_, Error>>()?, reach.reach_m))
+}
+
+/// The reach of all layers of a kind: one number, so that layers may not contradict one another.
+struct OneReach {
+    reach_m: f64,
+    given: bool,
+}
+
+impl OneReach {
+    fn new(usual_m: f64) -> OneReach {
+        OneReach {
+            reach_m: usual_m,
+            given: false,
+        }
+    }
+
+    fn read(&mut self, section: &Section<'_>) -> Result<(), Error> {
+        let Some(reach_m) = section.number("reach", 0.0..=FARTHEST_M)? else {
+            return Ok(());
+        };
+        if self.given && reach_m != self.reach_m {
+            let what = format!(
+                "{} differs from that of an earlier layer of the kind",
+                section.called("reach")
+            );
+            return Err(section.error("", what, "Give every layer of the kind the same reach."));
+        }
+        (self.reach_m, self.given) = (reach_m, true);
+        Ok(())
+    }
+}
+
+fn sources(top: &Section<'_>) -> Result<Vec<StudySource>, Error> {
+    top.sections("source")?.iter().map(source).collect()
+}
+
+fn source(section: &Section<'_>) -> Result<StudySource, Error> {
+    let at = section
+        .place("at")?
+        .ok_or_else(|| section.missing("at", "at = \"N1\""))?;
+    let head_m = section.number("head", HEADS_M)?;
+    let elevation_m = section.number("elevation", HEADS_M)?;
+    let pressure_m = section.number("pressure", PRESSURES_M)?;
+    let head_m = match (head_m, elevation_m, pressure_m) {
+        (Some(head_m), _, None) => head_m,
+        (None, Some(elevation_m), Some(pressure_m)) => elevation_m + pressure_m,
+        (Some(_), _, Some(_)) => {
+            let what = format!("{} gives the head and the pressure", section.called("pressure"));
+            return Err(section.error("", what, "Give `head_m`, or `elevation_m` and `pressure_m`, not both."));
+        }
+        _ => return Err(section.missing("head_m", "head_m = 120.0` (or `elevation_m` and `pressure_m")),
+    };
+    Ok(StudySource {
+        at,
+        head_m,
+        elevation_m,
+        greatest_m3_per_s: section.number("greatest", FLOWS_M3_PER_S)?,
+    })
+}
+
+fn law(section: &Section<'_>) -> Result<FrictionLaw, Error> {
+    Ok(match section.choice("law")? {
+        Some("darcy-weisbach") => FrictionLaw::DarcyWeisbach,
+        _ => FrictionLaw::HazenWilliams,
+    })
+}
+
+fn hydraulics_settings(section: &Section<'_>, law: FrictionLaw) -> Result<hydraulics::Settings, Error> {
+    let mut settings = hydraulics::Settings::default();
+    if law == FrictionLaw::DarcyWeisbach {
+        for key in ["constant", "flow_exponent", "diameter_exponent"] {
+            if section.has(key) {
+                let what = format!("{} is not used by the friction law darcy-weisbach", section.called(key));
+                return Err(section.error(key, what, "Leave it out, or take `law = \"hazen-williams\"`."));
+            }
+        }
+        if let Some(temperature_c) = section.plain("temperature_c", 0.0..=100.0)? {
+            settings.viscosity_m2_per_s = viscosity_m2_per_s(temperature_c);
+        }
+        return Ok(settings);
+    }
+    if section.has("temperature_c") {
+        let what = format!(
+            "{} is not used by the friction law hazen-williams",
+            section.called("temperature_c")
+        );
+        return Err(section.error(
+            "temperature_c",
+            what,
+            "Leave it out, or take `law = \"darcy-weisbach\"`.",
+        ));
+    }
+    let law = &mut settings.hazen_williams;
+    if let Some(constant) = section.plain("constant", NOT_BELOW_ZERO)? {
+        if !(10.0..=11.5).contains(&constant) {
+            let what = format!("{} cannot be {constant}", section.called("constant"));
+            let todo = "It is K of h = K L Q^n / (C^n D^m) in metres and seconds, between 10 and 11.5; 1.318 and 0.849 belong to the \
+                        velocity form, which is 10.67 here.";
+            return Err(section.error("constant", what, todo));
+        }
+        law.constant = constant;
+    }
+    law.flow_exponent = section.plain("flow_exponent", 1.8..=1.9)?.unwrap_or(law.flow_exponent);
+    law.diameter_exponent = section
+        .plain("diameter_exponent", 4.8..=4.9)?
+        .unwrap_or(law.diameter_exponent);
+    Ok(settings)
+}
+
+fn joining(section: &Section<'_>) -> Result<JoinSettings, Error> {
+    let usual = JoinSettings::default();
+    let tolerance_m = section
+        .number("tolerance", 0.0..=FARTHEST_M)?
+        .unwrap_or(usual.tolerance_m);
+    let look_m = section.number("look", 0.0..=FARTHEST_M)?;
+    if look_m.is_some_and(|look_m| look_m < tolerance_m) {
+        let what = format!("{} is less than the tolerance", section.called("look"));
+        return Err(section.error("", what, "Near misses lie outside the tolerance: look farther than it."));
+    }
+    Ok(JoinSettings {
+        tolerance_m,
+        look_m: look_m.unwrap_or(usual.look_m.max(tolerance_m)),
+        touch_m: section.number("touch", 0.0..=FARTHEST_M)?.unwrap_or(usual.touch_m),
+        zones: match section.choice("zones")? {
+            Some("ignore") => ZoneContact::Ignore,
+            _ => ZoneContact::Apart,
+        },
+    })
+}
+
+/// Limits as a table gives them, on top of others.
+fn limits(section: &Section<'_>, usual: &Limits) -> Result<Limits, Error> {
+    let mut limits = usual.clone();
+    let set = |limit: &mut Limit, key: &str, range: std::ops::RangeInclusive<f64>| {
+        let given = section.number(key, range)?;
+        if let Some(value) = given {
+            *limit = Limit::of_study(value);
+        }
+        Ok::<bool, Error>(given.is_some())
+    };
+    let low = set(&mut limits.pressure_low_m, "pressure_low", PRESSURES_M)?;
+    let low_serious = set(&mut limits.pressure_low_serious_m, "pressure_low_serious", PRESSURES_M)?;
+    let high = set(&mut limits.pressure_high_m, "pressure_high", PRESSURES_M)?;
+    let high_serious = set(
+        &mut limits.pressure_high_serious_m,
+        "pressure_high_serious",
+        PRESSURES_M,
+    )?;
+    set(&mut limits.velocity_high_m_per_s, "velocity_high", NOT_BELOW_ZERO)?;
+    set(&mut limits.gradient_high, "gradient_high", NOT_BELOW_ZERO)?;
+    set(&mut limits.gradient_high_large, "gradient_high_large", NOT_BELOW_ZERO)?;
+    limits.large_from_m = section
+        .number("large_from", NOT_BELOW_ZERO)?
+        .unwrap_or(limits.large_from_m);
+    if limits.pressure_low_serious_m.value > limits.pressure_low_m.value {
+        if low_serious && low {
+            let what = format!("{} is above `pressure_low`", section.called("pressure_low_serious"));
+            return Err(section.error("", what, "What is seriously low lies below what is low."));
+        }
+        one_follows(low, &mut limits.pressure_low_m, &mut limits.pressure_low_serious_m);
+    }
+    if limits.pressure_high_serious_m.value < limits.pressure_high_m.value {
+        if high_serious && high {
+            let what = format!("{} is below `pressure_high`", section.called("pressure_high_serious"));
+            return Err(section.error("", what, "What is seriously high lies above what is high."));
+        }
+        one_follows(high, &mut limits.pressure_high_m, &mut limits.pressure_high_serious_m);
+    }
+    Ok(limits)
+}
+
+/// A default on the wrong side of a limit that the study gives follows it.
+fn one_follows(first_given: bool, first: &mut Limit, second: &mut Limit) {
+    if first_given {
+        *second = first.clone();
+    } else {
+        *first = second.clone();
+    }
+}
+
+fn cases(top: &Section<'_>, limits_of_study: &Limits) -> Result<Vec<CaseSettings>, Error> {
+    let mut cases: Vec<CaseSettings> = Vec::new();
+    for section in top.sections("case")? {
+        let name = section.needed_text("name", "name = \"peak hour\"")?.trim().to_string();
+        if cases.iter().any(|case| case.name.eq_ignore_ascii_case(&name)) || name.eq_ignore_ascii_case("no draw") {
+            let what = format!("there is a second case `{name}`");
+            return Err(section.error(
+                "name",
+                what,
+                "Give every case a name of its own; `no draw` is the network at rest.",
+            ));
+        }
+        let limits = match section.sections("limits")?.pop() {
+            Some(own) => limits(&own, limits_of_study)?,
+            None => limits_of_study.clone(),
+        };
+        cases.push(CaseSettings {
+            name,
+            demand_times: section.plain("demand_times", NOT_BELOW_ZERO)?.unwrap_or(1.0),
+            demand_times_by: section.plain_by_name("demand_times_by")?,
+            tank_heads_m: section.number_by_name("tank_levels")?,
+            limits,
+        });
+    }
+    if cases.is_empty() {
+        cases.push(CaseSettings {
+            name: "average day".into(),
+            demand_times: 1.0,
+            demand_times_by: Vec::new(),
+            tank_heads_m: Vec::new(),
+            limits: limits_of_study.clone(),
+        });
+    }
+    Ok(cases)
+}
+
+fn fire(section: &Section<'_>, cases: &[CaseSettings], assets: &mut AssetSettings) -> Result<FireSettings, Error> {
+    let name = section.needed_text("case", &format!("case = \"{}\"", cases[cases.len() - 1].name))?;
+    let Some(case) = cases.iter().position(|case| case.name == name.trim()) else {
+        let names = cases.iter().map(|case| case.name.as_str());
+        let todo = match nearest(&name, names.clone()) {
+            Some(nearest) => format!("The nearest is `{nearest}`."),
+            None => format!("Cases of this study: {}.", names.collect::<Vec<_>>().join(", ")),
+        };
+        return Err(section.error(
+            "case",
+            format!("{} is `{name}`, which is no case of this study", section.called("case")),
+            todo,
+        ));
+    };
+    match section.choice("judged_at")? {
+        Some("main") => assets.hydrants_at_own_elevation = false,
+        Some("outlet") => {
+            let what = format!(
+                "{} is \"outlet\", and losses inside hydrants are not calculated by this version",
+                section.called("judged_at")
+            );
+            return Err(section.error("judged_at", what, "Take `hydrant` or `main`."));
+        }
+        _ => {}
+    }
+    Ok(FireSettings {
+        case,
+        residual_m: section
+            .number("residual", PRESSURES_M)?
+            .map_or_else(Fire::default_residual, Limit::of_study),
+        needed_m3_per_s: section.number("needed", FLOWS_M3_PER_S)?.filter(|needed| *needed > 0.0),
+        keep_elsewhere_m: section.number("keep_elsewhere", PRESSURES_M)?.map(Limit::of_study),
+    })
+}
