@@ -103,6 +103,10 @@ codes! {
         "The user's layer already has a column with the name of one of ours, so ours has another name."
         "A map that was coloured by that column still shows the old values."
         "Nothing, or remove the earlier result columns before the run."
+    FormatHoldsLess "format-holds-less" Map Note
+        "The format that a layer is written in cannot hold all that its source holds."
+        "The written layer lacks it, or has it shortened; the source is untouched."
+        "Write in the source's own format to keep everything."
     // ---- attributes --------------------------------------------------------------------------------------------
     IdMissing "id-missing" Map Note
         "A feature has no id."

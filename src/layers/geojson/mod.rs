@@ -8,8 +8,10 @@
 mod coordinates;
 mod properties;
 mod read;
+mod write;
 
 pub(super) use read::read;
+pub(super) use write::{read_again, write_converted, write_marked, write_new};
 
 /// Where our members go into a feature's text.
 #[derive(Clone, Copy, Debug, PartialEq)]

@@ -58,11 +58,6 @@ impl TextEncoding {
         let (bytes, _, bad) = self.encoding.encode(text);
         (!bad).then(|| bytes.into_owned())
     }
-
-    /// Where to cut bytes in this encoding so that at most `most` are left and no letter is cut in two.
-    pub fn name(self) -> &'static str {
-        self.encoding.name()
-    }
 }
 
 /// The encoding that a name stands for, as programs write it into `.cpg` files.
@@ -126,10 +121,20 @@ mod tests {
             ("ISO 88591", "windows-1252"),
             ("ISO8859-15", "ISO-8859-15"),
         ] {
-            assert_eq!(TextEncoding::of(Some(name), 0, None).name(), expected, "{name}");
+            assert_eq!(
+                TextEncoding::of(Some(name), 0, None).encoding.name(),
+                expected,
+                "{name}"
+            );
         }
-        assert_eq!(TextEncoding::of(None, 0x57, Some("UTF-8")).name(), "windows-1252");
-        assert_eq!(TextEncoding::of(None, 0, Some("cp1251")).name(), "windows-1251");
+        assert_eq!(
+            TextEncoding::of(None, 0x57, Some("UTF-8")).encoding.name(),
+            "windows-1252"
+        );
+        assert_eq!(
+            TextEncoding::of(None, 0, Some("cp1251")).encoding.name(),
+            "windows-1251"
+        );
     }
 
     #[test]

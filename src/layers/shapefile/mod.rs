@@ -6,7 +6,10 @@
 
 mod dbf;
 mod encoding;
+mod print;
 mod read;
 mod shapes;
+mod write;
 
-pub(super) use read::read;
+pub(super) use read::{read, read_again};
+pub(super) use write::{write_converted, write_marked, write_new};

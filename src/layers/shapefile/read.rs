@@ -8,9 +8,10 @@ use super::shapes;
 use crate::finding::{Checked, Code, Error, FeatureRef, Finding, Sentence, Severity};
 use crate::layers::crs::Crs;
 use crate::layers::files;
-use crate::layers::layer::{Cell, Column, Format, Layer, Replay, Source, Wanted, name_of};
+use crate::layers::layer::{Cell, Column, Columns, Format, Layer, Replay, Source, Wanted, name_of};
 use crate::layers::packed::Packed;
 use crate::layers::where_on_earth::{Guess, guess, spans_few_degrees};
+use crate::layers::write::changed;
 
 /// The bytes of every file of a shapefile.
 pub(in crate::layers) struct Files {
@@ -52,6 +53,15 @@ impl Files {
         })
     }
 
+    /// Reads the files of a layer again, which must be as they were.
+    pub fn unchanged(source: &Layer) -> Result<Files, Error> {
+        let files = Files::read(&source.source.path)?;
+        if files.sha256 != source.source.sha256 {
+            return Err(changed(&source.source.path));
+        }
+        Ok(files)
+    }
+
     /// Where one of them lies; the `.shp` if there is none.
     pub fn path(&self, ending: &str) -> &Path {
         let found = self.paths.iter().find(|(known, _)| *known == ending);
@@ -68,6 +78,21 @@ impl Files {
 /// Reads a layer.
 pub(in crate::layers) fn read(path: &Path, layer: u16, wanted: &Wanted) -> Result<Checked<Layer>, Error> {
     read_files(path, layer, &Files::read(path)?, wanted)
+}
+
+/// Reads a layer again with all its columns, to be written in another format.
+pub(in crate::layers) fn read_again(source: &Layer, heights: bool) -> Result<Layer, Error> {
+    let path = &source.source.path;
+    let files = Files::unchanged(source)?;
+    let Replay::Shapefile { encoding, .. } = &source.replay else {
+        unreachable!("a shapefile has a shapefile's replay");
+    };
+    let wanted = Wanted {
+        columns: Columns::All,
+        heights,
+        encoding: encoding.clone(),
+    };
+    Ok(read_files(path, 0, &files, &wanted)?.value)
 }
 
 /// Reads a layer from the bytes of its files.
