@@ -1,12 +1,11 @@
 //! Grading: the one place where a finding's final severity is set, after the hydraulics, by what the fault does to the
 //! answer.
 //!
-//! - A doubtful connection (near miss, crossing, zones kept apart) across which the heads differ by a metre or more, or
-//!   one of whose sides has no source, changes pressures if it is real: serious for a near miss that leaves a side
-//!   without source, else a warning. Where the heads agree to within a centimetre it changes little today: a near miss
-//!   stays a warning (redundancy is lost), but is listed after the others.
-//! - An assumed diameter on a main that carries water faster than the limit, or with more than a metre of head loss,
-//!   decides the answer: serious. On a main that carries next to nothing it is a note.
+//! - A near miss between a main with a source and one without is serious: everything behind it goes untested if it is real.
+//! - An assumed bore decides the answer where it makes the water lose a metre of head or more: serious. Where the main
+//!   carries next to nothing in every case it is a note.
+//!
+//! All else keeps the severity that its check gave it.
 
 use super::{Screened, Subject};
 use crate::finding::{Code, FeatureRef, Finding, Severity};

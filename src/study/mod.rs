@@ -7,7 +7,7 @@ mod settings;
 mod tables;
 
 pub use docs::study_file_page;
-pub use run::{Outcome, RunOptions, Worked, run};
+pub use run::{Outcome, RunOptions, Worked, run, run_and_write};
 
 use std::path::{Path, PathBuf};
 

@@ -8,6 +8,7 @@ use crate::calculation::{self, Calculation};
 use crate::finding::{Error, Finding, nearest};
 use crate::layers::{Format, Layer, LayerSet, LocalPlane, ReadOptions};
 use crate::network::{AssemblySettings, Case};
+use crate::report::{self, Report, UsedSetting, Written};
 use crate::screening::{self, Fire, Limits};
 use crate::topology::PipeMap;
 use crate::watch::{Watch, step};
@@ -27,7 +28,7 @@ pub struct RunOptions {
 #[derive(Clone, Debug)]
 pub enum Worked {
     /// Topology alone.
-    Map(PipeMap),
+    Map(Box<PipeMap>),
     /// The whole job.
     Full(Box<Calculation>),
 }
@@ -60,7 +61,7 @@ pub fn run(study: &Study, options: &RunOptions, watch: &dyn Watch) -> Result<Out
     let worked = if options.map_only {
         let (map, found) = calculation::map_only(&reading.assets, &study.joining, watch)?;
         findings.extend(found);
-        Worked::Map(map)
+        Worked::Map(Box::new(map))
     } else {
         let settings = calculation_settings(study, &mut reading)?;
         let mut calculation = calculation::calculate(&reading.assets, &settings, watch)?;
@@ -75,6 +76,46 @@ pub fn run(study: &Study, options: &RunOptions, watch: &dyn Watch) -> Result<Out
         worked,
         findings,
     })
+}
+
+impl Outcome {
+    /// The report of the run: its texts, and the layers that can be written.
+    pub fn report<'a>(&'a self, study: &'a Study, options: &RunOptions) -> Report<'a> {
+        let settings = study.used.iter().map(|used| UsedSetting {
+            key: [used.table.as_str(), used.key.as_str()].join(" ").trim().to_string(),
+            value: used.value.clone(),
+            is_default: !used.given,
+        });
+        let (map, calculation) = match &self.worked {
+            Worked::Map(map) => (map.as_ref(), None),
+            Worked::Full(calculation) => (&calculation.map, Some(calculation.as_ref())),
+        };
+        Report::new(report::Inputs {
+            title: &study.title,
+            settings: settings.collect(),
+            set: &self.set,
+            plane: &self.plane,
+            reading: &self.reading,
+            units: study.results_in,
+            format: options.format.unwrap_or(self.set.layers[0].source.format),
+            tolerance_m: study.joining.tolerance_m,
+            map,
+            calculation,
+            findings: &self.findings,
+        })
+    }
+}
+
+/// Runs a study and writes its results, all or nothing.
+///
+/// # Errors
+/// What stops the run, in a sentence; nothing is written then.
+pub fn run_and_write(study: &Study, options: &RunOptions, watch: &dyn Watch) -> Result<(Outcome, Written), Error> {
+    let outcome = run(study, options, watch)?;
+    step(watch, "writing", 0, 0)?;
+    let folder = options.out.clone().unwrap_or_else(|| study.default_out());
+    let written = outcome.report(study, options).write(&folder)?;
+    Ok((outcome, written))
 }
 
 fn read_layers(study: &Study, findings: &mut Vec<Finding>, watch: &dyn Watch) -> Result<LayerSet, Error> {
