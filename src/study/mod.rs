@@ -123,9 +123,9 @@ impl Study {
         settings::parse(path, text.trim_start_matches('\u{feff}'))
     }
 
-    /// Where results are written when nothing else is said: `results` beside the study file.
+    /// Where results are written when nothing else is said: `gradeline-results` beside the study file.
     pub fn default_out(&self) -> PathBuf {
-        self.folder().join("results")
+        self.folder().join("gradeline-results")
     }
 
     fn folder(&self) -> &Path {

@@ -531,3 +531,429 @@ fn fire(section: &Section<'_>, cases: &[CaseSettings], assets: &mut AssetSetting
         keep_elsewhere_m: section.number("keep_elsewhere", PRESSURES_M)?.map(Limit::of_study),
     })
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::assets::{NumberOrColumn, SourceAt};
+
+    const EVERYTHING: &str = r#"
+        title = "Existing network"
+        results_in = "us"
+
+        [[mains]]
+        from = "mains.geojson"
+        id = "main_id"
+        diameter = { column = "DIAM", unit = "in" }
+        diameter_is = "nominal"
+        c_factor = "c_hw"
+        roughness = "rough_mm"
+        minor_loss = "k"
+        material = "mat"
+        year = "laid"
+        length = "len_ft"
+        length_from = "stored"
+        zone = "zone"
+        status = "status"
+        kind = "kind"
+        leave_out = { STATUS = ["ABANDONED"], OWNER = "private", PHASE = [1, 2] }
+        encoding = "windows-1252"
+
+        [[mains]]
+        from = "more/mains.shp"
+
+        [nodes]
+        from = "nodes.geojson"
+        id = "node_id"
+        kind = "kind"
+        elevation = "elev_m"
+        head = { column = "head" , unit = "ft" }
+        demand = "dem_lps"
+        zone = "zone"
+        status = "status"
+        leave_out = { KIND = ["x"] }
+
+        [hydrants]
+        from = "hydrants.shp"
+        id = "ID"
+        elevation = "ELEV_FT"
+        needed_flow = "NEED_GPM"
+        zone = "ZONE"
+        status = "STATUS"
+        reach_ft = 20
+
+        [customers]
+        from = "customers.geojson"
+        demand = "dem_lps"
+        class = "class"
+        elevation = "elev_m"
+        lift_m = 6.0
+        reach_m = 40
+
+        [valves]
+        from = "valves.geojson"
+        kind = "kind"
+        status = "status"
+        main = "on_main"
+        reach_m = 1.5
+
+        [[source]]
+        at = "N1"
+        head_ft = 100
+
+        [[source]]
+        at = [12.5, 47]
+        elevation_m = 100.0
+        pressure_kpa = 98.0665
+        greatest_lps = 40
+
+        [joining]
+        tolerance_ft = 1
+        look_m = 5
+        touch_m = 0.002
+        zones = "ignore"
+
+        [friction]
+        law = "hazen-williams"
+        constant = 10.667
+        flow_exponent = 1.852
+        diameter_exponent = 4.871
+        default_c = 110
+        default_roughness_mm = 0.5
+        age_in_year = 2020
+
+        [[case]]
+        name = "peak hour"
+        demand_times = 2.5
+        demand_times_by = { industry = 1.0 }
+        tank_levels_m = { T1 = 118.2 }
+        [case.limits]
+        pressure_low_m = 14
+
+        [[case]]
+        name = "maximum day"
+        demand_times = 1.8
+
+        [fire]
+        case = "maximum day"
+        residual_psi = 20
+        needed_gpm = 1000
+        keep_elsewhere_bar = 1.4
+        judged_at = "main"
+
+        [limits]
+        pressure_low_psi = 35
+        pressure_high_kpa = 700
+        velocity_high_mps = 2
+        gradient_high_mkm = 5
+    "#;
+
+    fn study(text: &str) -> Result<Study, String> {
+        Study::parse(Path::new("town/study.toml"), text).map_err(|error| error.to_string())
+    }
+
+    /// What a study that has mains and `more` is refused with.
+    fn refused(more: &str) -> String {
+        let text = format!("{more}\n[mains]\nfrom = \"mains.geojson\"\n");
+        match study(&text) {
+            Err(error) => error,
+            Ok(_) => panic!("accepted: {more}"),
+        }
+    }
+
+    #[test]
+    fn every_key_is_read_and_obeyed() {
+        let study = study(EVERYTHING).unwrap();
+        assert_eq!(
+            (study.title.as_str(), study.results_in),
+            ("Existing network", UnitSystem::Us)
+        );
+        assert_eq!(study.layers.len(), 6);
+        assert_eq!(study.layers[1].path, Path::new("town/more/mains.shp"));
+        let mains = &study.assets.mains[0];
+        assert_eq!(mains.diameter.as_ref().unwrap().unit.unwrap().name, "in");
+        assert_eq!(mains.diameter_is, DiameterIs::Nominal);
+        assert_eq!(mains.length_from, LengthFrom::Stored);
+        assert_eq!(mains.common.leave_out.len(), 3);
+        assert_eq!(study.assets.customers[0].lift, Some(NumberOrColumn::Number(6.0)));
+        assert!((study.assets.reach.hydrants_m - 6.096).abs() < 1e-12);
+        assert_eq!(
+            (study.assets.reach.customers_m, study.assets.reach.valves_m),
+            (40.0, 1.5)
+        );
+        assert!((study.assets.sources[0].head_m - 30.48).abs() < 1e-12);
+        assert_eq!(study.assets.sources[1].at, SourceAt::Point([12.5, 47.0]));
+        assert!((study.assets.sources[1].head_m - 110.0).abs() < 1e-9);
+        assert!((study.joining.tolerance_m - 0.3048).abs() < 1e-12);
+        assert_eq!(study.joining.zones, ZoneContact::Ignore);
+        assert_eq!(study.hydraulics.hazen_williams.constant, 10.667);
+        assert_eq!(
+            study.assets.default_c_factor,
+            Valued {
+                value: 110.0,
+                basis: Basis::Study
+            }
+        );
+        assert_eq!(study.assets.age_in_year, 2020);
+        assert_eq!(study.cases[0].tank_heads_m, vec![("T1".to_string(), 118.2)]);
+        assert_eq!(study.cases[0].limits.pressure_low_m.value, 14.0);
+        assert_eq!(study.cases[0].limits.pressure_low_serious_m.value, 14.0);
+        assert!((study.cases[1].limits.pressure_low_m.value - 24.607).abs() < 1e-3);
+        let fire = study.fire.unwrap();
+        assert_eq!(fire.case, 1);
+        assert!((fire.needed_m3_per_s.unwrap() - 0.063_090_196_4).abs() < 1e-9);
+        assert!(!study.assets.hydrants_at_own_elevation);
+        assert_eq!(study.limits.gradient_high.value, 0.005);
+        assert_eq!(study.limits.velocity_high_m_per_s.from, "study");
+        assert!(study.limits.pressure_low_serious_m.is_default);
+    }
+
+    #[test]
+    fn the_least_study_has_defaults_and_records_them() {
+        let study = study("[mains]\nfrom = \"mains.geojson\"").unwrap();
+        assert_eq!(study.title, "study");
+        assert_eq!(study.cases.len(), 1);
+        assert_eq!(study.cases[0].name, "average day");
+        assert_eq!(study.joining, JoinSettings::default());
+        assert!(study.fire.is_none());
+        let used = |key: &str| study.used.iter().find(|used| used.key == key).unwrap();
+        assert_eq!((used("from").given, used("from").table.as_str()), (true, "[mains]"));
+        assert_eq!(
+            (used("tolerance").given, used("tolerance").value.as_str()),
+            (false, "0.3 m")
+        );
+    }
+
+    #[test]
+    fn the_defaults_in_the_key_list_are_those_that_hold() {
+        use super::super::keys::Takes;
+        use crate::units::Unit;
+        let study = study("[mains]\nfrom = \"mains.geojson\"").unwrap();
+        let (joining, limits, reach) = (&study.joining, &study.limits, study.assets.reach);
+        let law = study.hydraulics.hazen_williams;
+        let fire = Fire::default_residual();
+        let holds = [
+            (&tables::JOINING, "tolerance", joining.tolerance_m),
+            (&tables::JOINING, "look", joining.look_m),
+            (&tables::JOINING, "touch", joining.touch_m),
+            (&tables::LIMITS, "pressure_low", limits.pressure_low_m.value),
+            (
+                &tables::LIMITS,
+                "pressure_low_serious",
+                limits.pressure_low_serious_m.value,
+            ),
+            (&tables::LIMITS, "pressure_high", limits.pressure_high_m.value),
+            (
+                &tables::LIMITS,
+                "pressure_high_serious",
+                limits.pressure_high_serious_m.value,
+            ),
+            (&tables::LIMITS, "velocity_high", limits.velocity_high_m_per_s.value),
+            (&tables::LIMITS, "gradient_high", limits.gradient_high.value),
+            (&tables::LIMITS, "gradient_high_large", limits.gradient_high_large.value),
+            (&tables::LIMITS, "large_from", limits.large_from_m),
+            (&tables::FIRE, "residual", fire.value),
+            (&tables::HYDRANTS, "reach", reach.hydrants_m),
+            (&tables::CUSTOMERS, "reach", reach.customers_m),
+            (&tables::VALVES, "reach", reach.valves_m),
+            (&tables::FRICTION, "default_c", study.assets.default_c_factor.value),
+            (
+                &tables::FRICTION,
+                "default_roughness",
+                study.assets.default_roughness_m.value,
+            ),
+            (&tables::FRICTION, "temperature_c", hydraulics::USUAL_TEMPERATURE_C),
+        ];
+        for (table, name, value) in holds {
+            let key = table.keys.iter().find(|key| key.name == name).unwrap();
+            let mut words = key.default.split(' ');
+            let number: f64 = words.next().unwrap().parse().unwrap();
+            let unit = match key.takes {
+                Takes::Number(quantity) => Unit::parse(words.next().unwrap(), quantity).unwrap(),
+                _ => Unit::all(crate::units::Quantity::Plain).next().unwrap(),
+            };
+            assert!(
+                (unit.to_si(number) - value).abs() < 1e-9,
+                "{name}: {} says {value}",
+                key.default
+            );
+        }
+        let key = tables::FRICTION.keys.iter().find(|key| key.name == "constant").unwrap();
+        assert!((key.default.parse::<f64>().unwrap() - law.constant).abs() < 1e-5);
+        assert!((law.flow_exponent - 1.0 / 0.54).abs() < 1e-12 && (law.diameter_exponent - 2.63 / 0.54).abs() < 1e-12);
+    }
+
+    #[test]
+    fn darcy_weisbach_takes_the_temperature() {
+        let text =
+            "[mains]\nfrom = \"m.shp\"\nroughness = \"k_mm\"\n[friction]\nlaw = \"darcy-weisbach\"\ntemperature_c = 20";
+        let study = study(text).unwrap();
+        assert_eq!(study.assets.law, FrictionLaw::DarcyWeisbach);
+        assert_eq!(study.hydraulics.viscosity_m2_per_s, viscosity_m2_per_s(20.0));
+    }
+
+    #[test]
+    fn every_key_misspelt_is_refused_with_the_nearest_spelling() {
+        for (section, table) in [
+            ("joining", &tables::JOINING),
+            ("friction", &tables::FRICTION),
+            ("limits", &tables::LIMITS),
+        ] {
+            for key in table.keys {
+                let right = key.spellings()[0].clone();
+                let wrong = right.replacen(|letter: char| letter == right.chars().next().unwrap(), "q", 1);
+                let error = refused(&format!("[{section}]\n{wrong} = 1"));
+                assert!(error.contains(&format!("`{wrong}`")), "{error}");
+                assert!(error.contains("The nearest is"), "{error}");
+            }
+        }
+    }
+
+    #[test]
+    fn what_is_wrong_is_said_with_its_line_and_what_to_do() {
+        for (more, wanted) in [
+            (
+                "[joining]\ntolerence_m = 1",
+                "line 2: there is no key `tolerence_m` in [joining]. The nearest is `tolerance_m`",
+            ),
+            (
+                "[joining]\ntolerance = 1",
+                "`tolerance` in [joining] does not end in a unit that fits. Write one of: `tolerance_m`",
+            ),
+            ("[joining]\ntolerance_psi = 1", "does not end in a unit that fits"),
+            (
+                "[joining]\ntolerance_m = 1\ntolerance_ft = 3",
+                "are one setting in two units",
+            ),
+            (
+                "[joining]\ntolerance_m = \"1\"",
+                "is a text. It takes a number without quotes",
+            ),
+            (
+                "[joining]\ntolerance_m = -1",
+                "cannot be -1 m. It must lie between 0 m and 10000 m",
+            ),
+            ("[joining]\ntolerance_m = nan", "not finite"),
+            ("[joining]\ntolerance_m = 2\nlook_m = 1", "is less than the tolerance"),
+            (
+                "[joining]\nzones = \"appart\"",
+                "cannot be `appart`. It takes one of: `apart`, `ignore`",
+            ),
+            (
+                "[joining]\ndecisions = \"joins.geojson\"",
+                "which this version does not calculate",
+            ),
+            (
+                "[pumps]\nfrom = \"pumps.shp\"",
+                "asks for pumps, which this version does not calculate",
+            ),
+            ("[[curve]]\nname = \"well\"", "pump curves"),
+            ("[tests]\nfrom = \"tests.shp\"", "field flow tests"),
+            ("[proposal.mains]\nfrom = \"new.shp\"", "a proposed development"),
+            ("[valves]\nfrom = \"v.shp\"\nsetting = \"set_psi\"", "regulating valves"),
+            ("[valves]\nfrom = \"v.shp\"\nflow_bearing = \"b\"", "does not calculate"),
+            ("[[source]]\nat = \"N1\"\nstatic_psi = 60", "a source by a flow test"),
+            ("[[source]]\nat = \"N1\"", "has no `head_m`"),
+            ("[[source]]\nhead_m = 1", "has no `at`"),
+            ("[[source]]\nat = true\nhead_m = 1", "is true or false. It takes an id"),
+            ("[[source]]\nat = \"N\"\nhead_m = 1\npressure_m = 2", "not both"),
+            ("[[case]]\nname = \"a\"\noff = [\"p\"]", "pumps"),
+            (
+                "[[case]]\nname = \"a\"\n[[case]]\nname = \"A\"",
+                "there is a second case `A`",
+            ),
+            ("[[case]]\ndemand_times = 1", "has no `name`"),
+            ("[[case]]\nname = \"a\"\ndemand_times = -1", "must not be below 0"),
+            (
+                "[[case]]\nname = \"a\"\ntank_levels = { T = 1 }",
+                "does not end in a unit",
+            ),
+            (
+                "[[case]]\nname = \"a\"\n[case.limits]\npresure_low_m = 1",
+                "in [case.limits]. The nearest is `pressure_low_m`",
+            ),
+            ("[fire]\nneeded_lps = 1", "[fire] has no `case`"),
+            (
+                "[[case]]\nname = \"maximum day\"\n[fire]\ncase = \"maximun day\"",
+                "The nearest is `maximum day`",
+            ),
+            (
+                "[fire]\ncase = \"average day\"\njudged_at = \"outlet\"",
+                "losses inside hydrants",
+            ),
+            ("[friction]\nlaw = \"darcy\"", "It takes one of"),
+            ("[friction]\nconstant = 1.318", "velocity form"),
+            (
+                "[friction]\ntemperature_c = 10",
+                "is not used by the friction law hazen-williams",
+            ),
+            (
+                "[limits]\npressure_low_m = 10\npressure_low_serious_m = 20",
+                "is above `pressure_low`",
+            ),
+            ("results_in = \"imperial\"", "It takes one of: `si`, `us`"),
+            (
+                "titel = \"x\"",
+                "line 1: there is no key `titel` in the top of the study. The nearest is `title`",
+            ),
+            ("title = x", "line 1, column 9"),
+            ("[joining]\n[joining]", "line 2"),
+            (
+                "[nodes]\nfrom = \"n.shp\"\nelevation = { column = \"z\", units = \"m\" }",
+                "there is no key `units`",
+            ),
+            (
+                "[nodes]\nfrom = \"n.shp\"\nelevation = { column = \"z\", unit = \"gpm\" }",
+                "cannot be in `gpm`",
+            ),
+            (
+                "[nodes]\nfrom = \"n.shp\"\nelevation = { unit = \"m\" }",
+                "names no column",
+            ),
+            ("[nodes]\nfrom = \"n.shp\"\nelevation = 7", "is a whole number"),
+            ("[nodes]\nfrom = \"town.gpkg#nodes\"", "a file of several layers"),
+            ("[nodes]\nfrom = \"n.shp\"\nid = \"\"", "is empty"),
+            ("[nodes]\nid = \"n\"", "[nodes] has no `from`"),
+            ("nodes = 3", "is a whole number. It takes a table"),
+            ("[customers]\nfrom = \"c.shp\"\nlift = 6", "does not end in a unit"),
+            (
+                "[[hydrants]]\nfrom = \"a.shp\"\nreach_m = 1\n[[hydrants]]\nfrom = \"b.shp\"\nreach_m = 2",
+                "differs",
+            ),
+            (
+                "[nodes]\nfrom = \"n.shp\"\nleave_out = { KIND = { a = 1 } }",
+                "does not list values",
+            ),
+        ] {
+            let error = refused(more);
+            assert!(
+                error.starts_with("town/study.toml: ") && error.contains(wanted),
+                "{more}\n{error}"
+            );
+        }
+    }
+
+    #[test]
+    fn mains_must_be_named_and_their_keys_must_not_contradict() {
+        assert!(study("").unwrap_err().contains("has no `mains`"));
+        let of_mains = |more: &str| study(&format!("[mains]\nfrom = \"m.shp\"\n{more}")).unwrap_err();
+        assert!(of_mains("roughness = \"k_mm\"").contains("is not used by the friction law hazen-williams"));
+        assert!(of_mains("length_from = \"stored\"").contains("no `length` column is named"));
+        assert!(of_mains("diameter_is = \"outside\"").contains("no `material` column"));
+        assert!(of_mains("diameter_is = \"inner\"").contains("It takes one of"));
+    }
+
+    #[test]
+    fn a_lift_may_be_a_column() {
+        for (key, unit) in [("lift = \"tap\"", None), ("lift_ft = \"tap\"", Some("ft"))] {
+            let study = study(&format!(
+                "[mains]\nfrom = \"m.shp\"\n[customers]\nfrom = \"c.shp\"\n{key}"
+            ))
+            .unwrap();
+            let Some(NumberOrColumn::Column(column)) = &study.assets.customers[0].lift else {
+                panic!("{key}")
+            };
+            assert_eq!(column.unit.map(|unit| unit.name), unit);
+        }
+    }
+}
