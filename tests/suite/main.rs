@@ -3,3 +3,4 @@
 mod hydraulic;
 mod numbers;
 mod properties;
+mod sample_town;

@@ -1,0 +1,267 @@
+//! Faults of hydrants, customers, valves and node points.
+
+use super::faults::{on, pick, rests_on_loop};
+use super::lcg::Lcg;
+use super::plane::{Point, add, cross, direction, distance, place_along, scale};
+use super::town::{
+    Customer, FIRST_CUSTOMER_ID, FIRST_HYDRANT_ID, FIRST_NODE_ID, FIRST_VALVE_ID, Hydrant, Node, Town, Valve,
+};
+
+/// Plants every fault of the point layers. Comes last: ids of points follow their rows.
+pub fn plant_all(town: &mut Town, lcg: &mut Lcg) {
+    closed_valves(town, lcg);
+    valves(town, lcg);
+    hydrants_between(town);
+    off_main(town);
+    node_points(town);
+}
+
+fn add_valve(town: &mut Town, at: Point, kind: &'static str, status: &'static str, main: Option<u32>) -> u32 {
+    town.valves.push(Valve { at, kind, status, main });
+    FIRST_VALVE_ID + town.valves.len() as u32 - 1
+}
+
+/// Valves found shut: in the middle of a main whose hydrant then has one way to draw from; and where three mains meet.
+fn closed_valves(town: &mut Town, lcg: &mut Lcg) {
+    for _ in 0..3 {
+        let index = pick(town, lcg, |main, index| rests_on_loop(town, main, index));
+        let main = &mut town.mains[index];
+        main.planted = true;
+        let at = place_along(main.line().expect("drawn"), 0.18 * main.length_m()).0;
+        let (id, name) = (main.id, town.main_name(index));
+        let valve = add_valve(town, at, "gate", "closed", id);
+        on(
+            town,
+            "valves",
+            valve,
+            ["closed valve", ""],
+            name,
+            "shut in the middle of a main of a loop: a state of the map, no finding of its own",
+        );
+    }
+    let mut made = 0;
+    for node in (11..town.nodes.len()).step_by(3) {
+        let here = town.mains_at(node);
+        let fits = here
+            .iter()
+            .all(|main| town.mains[*main].feeds() && !town.mains[*main].planted);
+        if made == 2 || here.len() != 3 || !fits || town.ends_and_tees(node) != (3, 0) {
+            continue;
+        }
+        made += 1;
+        let names: Vec<String> = here.iter().map(|main| town.main_name(*main)).collect();
+        for main in here {
+            town.mains[main].planted = true;
+        }
+        let valve = add_valve(town, town.nodes[node].at, "gate", "closed", None);
+        on(
+            town,
+            "valves",
+            valve,
+            ["closed valve on a three-way node", "valve-on-junction"],
+            names.join(" "),
+            "names no main",
+        );
+    }
+}
+
+fn valves(town: &mut Town, lcg: &mut Lcg) {
+    for status in ["stuck?", "see file"] {
+        let index = pick(town, lcg, |main, _| main.length_m() > 60.0);
+        town.mains[index].planted = true;
+        let at = place_along(town.mains[index].line().expect("drawn"), 21.0).0;
+        let valve = add_valve(town, at, "gate", status, None);
+        on(
+            town,
+            "valves",
+            valve,
+            ["unknown valve status", "valve-status-unknown"],
+            String::new(),
+            status,
+        );
+    }
+    for wrong in [990_001, 990_002] {
+        let index = pick(town, lcg, |main, _| main.length_m() > 60.0);
+        town.mains[index].planted = true;
+        let at = place_along(town.mains[index].line().expect("drawn"), 18.0).0;
+        let name = town.main_name(index);
+        let valve = add_valve(town, at, "gate", "open", Some(wrong));
+        on(
+            town,
+            "valves",
+            valve,
+            ["valve names an unknown main", "valve-main-unknown"],
+            name,
+            "stands on the main named under other",
+        );
+    }
+}
+
+/// A hydrant in the corner of two mains of different size.
+fn hydrants_between(town: &mut Town) {
+    let mut made = 0;
+    for node in (5..town.nodes.len()).step_by(7) {
+        let here = town.mains_at(node);
+        if made == 2 || here.len() != 3 || town.ends_and_tees(node) != (3, 0) {
+            continue;
+        }
+        let centre = town.nodes[node].at;
+        let away = |main: usize| {
+            let line = town.mains[main].line()?;
+            let from_start = town.mains[main].ends[0] == node;
+            Some(if from_start {
+                direction(line[0], line[1])
+            } else {
+                direction(line[line.len() - 1], line[line.len() - 2])
+            })
+        };
+        let corner = here
+            .iter()
+            .flat_map(|a| here.iter().map(move |b| (*a, *b)))
+            .find_map(|(a, b)| {
+                let (one, other) = (away(a)?, away(b)?);
+                let fits = |main: usize| town.mains[main].feeds() && !town.mains[main].planted;
+                let square = cross(one, other) > 0.8;
+                (fits(a) && fits(b) && square && town.mains[a].diameter_in < town.mains[b].diameter_in)
+                    .then_some((a, b, one, other))
+            });
+        let Some((a, b, one, other)) = corner else { continue };
+        let at = add(centre, scale(add(one, other), 0.9));
+        if town.hydrants.iter().any(|hydrant| distance(hydrant.at, at) < 60.0) {
+            continue;
+        }
+        made += 1;
+        let names = format!("{} {}", town.main_name(a), town.main_name(b));
+        let zone = town.mains[a].zone;
+        for main in [a, b] {
+            town.mains[main].planted = true;
+        }
+        let id = add_hydrant(town, at, zone);
+        on(
+            town,
+            "hydrants",
+            id,
+            ["hydrant between two mains", "hydrant-between-mains"],
+            names,
+            "as near to a smaller main as to a larger",
+        );
+    }
+}
+
+fn add_hydrant(town: &mut Town, at: Point, zone: &'static str) -> u32 {
+    town.hydrants.push(Hydrant {
+        at,
+        elevation_m: None,
+        needed_gpm: 500.0,
+        zone,
+    });
+    FIRST_HYDRANT_ID + town.hydrants.len() as u32 - 1
+}
+
+/// A place at least `least_m` from every main, near a start.
+fn clear_place(town: &Town, start: Point, least_m: f64) -> Point {
+    let mut place = start;
+    while town.clearance(place, &[]) < least_m {
+        place = add(place, [-3.0, 5.0]);
+    }
+    place
+}
+
+fn off_main(town: &mut Town) {
+    for start in [[420.0, 60.0], [-640.0, -330.0]] {
+        let at = clear_place(town, start, 24.0);
+        let id = add_hydrant(town, at, "low");
+        on(
+            town,
+            "hydrants",
+            id,
+            ["hydrant off main", "hydrant-off-main"],
+            String::new(),
+            "over 20 m from any main",
+        );
+    }
+    for start in [[-1500.0, 900.0], [1250.0, 1000.0], [80.0, 1150.0]] {
+        let at = clear_place(town, start, 140.0);
+        town.customers.push(Customer {
+            at,
+            demand_lps: 0.0105,
+            class: "house",
+        });
+        let id = FIRST_CUSTOMER_ID + town.customers.len() as u32 - 1;
+        on(
+            town,
+            "customers",
+            id,
+            ["customer off main", "customer-off-main"],
+            String::new(),
+            "over 100 m from any main",
+        );
+    }
+    for start in [[250.0, -380.0], [960.0, 250.0]] {
+        let at = clear_place(town, start, 9.0);
+        let id = add_valve(town, at, "gate", "closed", None);
+        on(
+            town,
+            "valves",
+            id,
+            ["valve off main", "valve-off-main"],
+            String::new(),
+            "closed, over 8 m from any main",
+        );
+    }
+}
+
+fn node_points(town: &mut Town) {
+    for start in [[-330.0, -250.0], [700.0, -250.0]] {
+        let at = clear_place(town, start, 16.0);
+        let node = town.add_node(at, "low");
+        town.nodes[node].demand_lps = 0.35;
+        let id = node_id(town, node);
+        on(
+            town,
+            "nodes",
+            id,
+            ["node off main", "node-off-main"],
+            String::new(),
+            "has a demand, lies over 15 m from any main",
+        );
+    }
+    let fits = |node: &Node| {
+        node.drawn && node.kind == "node" && node.elevation_m.is_some_and(|metres| metres > 11.0 && metres < 20.0)
+    };
+    let corners: Vec<usize> = (0..town.nodes.len())
+        .filter(|node| fits(&town.nodes[*node]) && town.mains_at(*node).len() >= 3)
+        .collect();
+    for node in corners.iter().skip(29).step_by(61).take(2) {
+        town.nodes[*node].elevation_m = town.nodes[*node].elevation_m.map(|metres| metres * 3.2808);
+        let id = node_id(town, *node);
+        on(
+            town,
+            "nodes",
+            id,
+            ["elevation in feet among metres", "elevation-doubtful"],
+            String::new(),
+            "3.28 times the ground",
+        );
+    }
+    for node in corners.iter().skip(7).step_by(23).take(6) {
+        town.nodes[*node].elevation_m = None;
+        let id = node_id(town, *node);
+        on(
+            town,
+            "nodes",
+            id,
+            ["missing elevation", "elevation-missing"],
+            String::new(),
+            "",
+        );
+    }
+    for (node, demand_lps) in corners.iter().skip(3).step_by(31).take(4).zip([1.8, 0.9, 2.4, 0.7]) {
+        town.nodes[*node].demand_lps = demand_lps;
+    }
+}
+
+/// The id a node point is written with.
+fn node_id(town: &Town, node: usize) -> u32 {
+    FIRST_NODE_ID + town.nodes[..node].iter().filter(|before| before.drawn).count() as u32
+}
