@@ -79,6 +79,17 @@ pub fn run(study: &Study, options: &RunOptions, watch: &dyn Watch) -> Result<Out
 }
 
 impl Outcome {
+    /// Whether every case, and the network at rest, settled.
+    pub fn is_proved(&self) -> bool {
+        match &self.worked {
+            Worked::Map(_) => true,
+            Worked::Full(calculation) => {
+                let mut solved = calculation.cases.iter().chain([&calculation.at_rest]);
+                solved.all(|solved| solved.outcome.is_ok())
+            }
+        }
+    }
+
     /// The report of the run: its texts, and the layers that can be written.
     pub fn report<'a>(&'a self, study: &'a Study, options: &RunOptions) -> Report<'a> {
         let settings = study.used.iter().map(|used| UsedSetting {
