@@ -251,3 +251,181 @@ fn every_file_of(input: &Path) -> Vec<PathBuf> {
     }
     all.iter().filter_map(|path| fs::canonicalize(path).ok()).collect()
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use std::cell::Cell;
+
+    /// A store whose n-th step fails, counted over all kinds of steps.
+    struct Failing {
+        left: Cell<u32>,
+    }
+
+    impl Failing {
+        fn step(&self) -> io::Result<()> {
+            if self.left.get() == 0 {
+                return Err(io::Error::other("the disk is full"));
+            }
+            self.left.set(self.left.get() - 1);
+            Ok(())
+        }
+    }
+
+    impl Store for Failing {
+        fn create_folder(&self, path: &Path) -> io::Result<()> {
+            self.step()?;
+            Disk.create_folder(path)
+        }
+
+        fn create(&self, path: &Path) -> io::Result<Box<dyn Write>> {
+            self.step()?;
+            let file = Disk.create(path)?;
+            // The file's own writes fail at the same count.
+            match self.step() {
+                Ok(()) => Ok(file),
+                Err(_) => Ok(Box::new(Full)),
+            }
+        }
+
+        fn rename(&self, from: &Path, to: &Path) -> io::Result<()> {
+            self.step()?;
+            Disk.rename(from, to)
+        }
+    }
+
+    struct Full;
+
+    impl Write for Full {
+        fn write(&mut self, _: &[u8]) -> io::Result<usize> {
+            Err(io::Error::other("the disk is full"))
+        }
+
+        fn flush(&mut self) -> io::Result<()> {
+            Ok(())
+        }
+    }
+
+    fn results(target: &Path, inputs: &[PathBuf], store: &dyn Store, content: &str) -> Result<Vec<PathBuf>, Error> {
+        let mut out = OutputDir::open_in(target, inputs, store)?;
+        out.write("mains.geojson", |file| file.write_all(content.as_bytes()))?;
+        out.write("nodes.geojson", |file| file.write_all(content.as_bytes()))?;
+        out.write(SUMMARY, |file| {
+            file.write_all(b"{\"files\":[\"mains.geojson\",\"nodes.geojson\"]}")
+        })?;
+        out.finish()
+    }
+
+    /// Everything in a folder: names and contents.
+    fn everything(folder: &Path) -> Vec<(String, String)> {
+        let mut all: Vec<(String, String)> = fs::read_dir(folder)
+            .unwrap()
+            .flat_map(|entry| {
+                let path = entry.unwrap().path();
+                let name = path.file_name().unwrap().to_string_lossy().into_owned();
+                match path.is_dir() {
+                    true => everything(&path)
+                        .into_iter()
+                        .map(|(inner, text)| (format!("{name}/{inner}"), text))
+                        .collect(),
+                    false => vec![(name, fs::read_to_string(&path).unwrap())],
+                }
+            })
+            .collect();
+        all.sort();
+        all
+    }
+
+    #[test]
+    fn results_come_whole_and_replace_earlier_ones_alone() {
+        let place = tempfile::tempdir().unwrap();
+        let target = place.path().join("a/results");
+        let written = results(&target, &[], &Disk, "one").unwrap();
+        assert_eq!(written[0], fs::canonicalize(&target).unwrap().join("mains.geojson"));
+        fs::write(target.join("my notes.txt"), "mine").unwrap();
+        fs::create_dir(target.join("drawings")).unwrap();
+        fs::write(target.join("drawings/a.qgz"), "mine").unwrap();
+        let mut out = OutputDir::open(&target, &[]).unwrap();
+        out.write("mains.geojson", |file| file.write_all(b"two")).unwrap();
+        out.write(SUMMARY, |file| file.write_all(b"{\"files\":[\"mains.geojson\"]}"))
+            .unwrap();
+        assert_eq!(out.files(), ["mains.geojson", SUMMARY]);
+        out.finish().unwrap();
+        let names: Vec<String> = everything(place.path()).into_iter().map(|(name, _)| name).collect();
+        assert_eq!(
+            names,
+            [
+                "a/results/drawings/a.qgz",
+                "a/results/mains.geojson",
+                "a/results/my notes.txt",
+                "a/results/summary.json"
+            ],
+            "nodes.geojson of the earlier run is gone, what is not ours is there, and nothing is left beside"
+        );
+        assert_eq!(fs::read_to_string(target.join("mains.geojson")).unwrap(), "two");
+    }
+
+    #[test]
+    fn whichever_step_fails_the_folder_stays_as_it_was() {
+        let place = tempfile::tempdir().unwrap();
+        let target = place.path().join("results");
+        let mut failures = 0;
+        for earlier in [false, true] {
+            if earlier {
+                results(&target, &[], &Disk, "one").unwrap();
+                fs::write(target.join("notes.txt"), "mine").unwrap();
+                fs::write(target.join("more notes.txt"), "mine").unwrap();
+            }
+            let before = everything(place.path());
+            for step in 0.. {
+                let store = Failing { left: Cell::new(step) };
+                match results(&target, &[], &store, "two") {
+                    Err(error) => {
+                        assert!(error.to_string().contains("the disk is full"), "{error}");
+                        assert_eq!(everything(place.path()), before, "step {step}");
+                        failures += 1;
+                    }
+                    Ok(_) => break,
+                }
+            }
+            fs::remove_dir_all(&target).unwrap();
+        }
+        assert!(failures > 15, "{failures}");
+    }
+
+    #[test]
+    fn folders_and_files_that_are_not_ours_are_refused() {
+        let place = tempfile::tempdir().unwrap();
+        let target = place.path().join("results");
+        fs::create_dir(&target).unwrap();
+        results(&target, &[], &Disk, "into an empty folder").unwrap();
+        let input = target.join("mains.geojson");
+        let before = everything(place.path());
+        let error = results(&target, std::slice::from_ref(&input), &Disk, "two").unwrap_err();
+        assert!(
+            error.to_string().contains("would overwrite a file that was read"),
+            "{error}"
+        );
+        assert_eq!(everything(place.path()), before);
+        fs::write(target.join(SUMMARY), "{\"files\":[\"mains.geojson\"]}").unwrap();
+        let error = results(&target, &[], &Disk, "two").unwrap_err();
+        assert!(error.to_string().contains("no earlier run wrote"), "{error}");
+        fs::write(target.join(SUMMARY), "{}").unwrap();
+        let error = results(&target, &[], &Disk, "two").unwrap_err();
+        assert!(error.to_string().contains("something else than results"), "{error}");
+        assert!(results(&input, &[], &Disk, "two").is_err(), "the target is a file");
+        assert!(results(Path::new("/"), &[], &Disk, "two").is_err());
+    }
+
+    #[test]
+    fn an_input_that_no_result_is_named_like_is_kept() {
+        let place = tempfile::tempdir().unwrap();
+        let target = place.path().join("results");
+        results(&target, &[], &Disk, "one").unwrap();
+        let input = target.join("nodes.geojson");
+        let mut out = OutputDir::open(&target, std::slice::from_ref(&input)).unwrap();
+        out.write("mains.geojson", |file| file.write_all(b"two")).unwrap();
+        out.finish().unwrap();
+        assert_eq!(fs::read_to_string(input).unwrap(), "one");
+    }
+}

@@ -224,3 +224,102 @@ fn date(bytes: &[u8]) -> Raw<'_> {
         _ => Raw::Text(bytes),
     }
 }
+
+#[cfg(test)]
+pub(super) mod tests {
+    use super::*;
+
+    /// A table from its columns (name, type, width, decimals) and its records as they stand in the file.
+    pub fn table(columns: &[(&str, u8, u8, u8)], records: &[&[u8]]) -> Vec<u8> {
+        let record_length = 1 + columns.iter().map(|column| column.2 as usize).sum::<usize>();
+        let mut bytes = vec![0; 32];
+        bytes[0] = 3;
+        bytes[4..8].copy_from_slice(&(records.len() as u32).to_le_bytes());
+        bytes[8..10].copy_from_slice(&(33 + 32 * columns.len() as u16).to_le_bytes());
+        bytes[10..12].copy_from_slice(&(record_length as u16).to_le_bytes());
+        for (name, kind, width, decimals) in columns {
+            let mut descriptor = [0; 32];
+            descriptor[..name.len()].copy_from_slice(name.as_bytes());
+            (descriptor[11], descriptor[16], descriptor[17]) = (*kind, *width, *decimals);
+            bytes.extend_from_slice(&descriptor);
+        }
+        bytes.push(END_OF_DESCRIPTORS);
+        for record in records {
+            assert_eq!(record.len(), record_length);
+            bytes.extend_from_slice(record);
+        }
+        bytes.push(0x1a);
+        bytes
+    }
+
+    fn cell(kind: u8, bytes: &[u8]) -> Cell {
+        let record = [b" ", bytes].concat();
+        let table = table(&[("x", kind, bytes.len() as u8, 0)], &[&record]);
+        let dbf = Dbf::new(&table).unwrap();
+        match dbf.fields[0].value(dbf.record(0)) {
+            Raw::Cell(cell) => cell,
+            Raw::Text(text) => Cell::Text(String::from_utf8_lossy(text).into()),
+        }
+    }
+
+    #[test]
+    fn cells_are_exact_and_one_odd_number_is_that_cell_alone() {
+        let text = |text: &str| Cell::Text(text.into());
+        for (kind, bytes, expected) in [
+            (b'N', &b"9007199254740993"[..], Cell::Whole(9_007_199_254_740_993)),
+            (b'N', b"  -12 ", Cell::Whole(-12)),
+            (b'N', b"99999999999999999999", text("99999999999999999999")),
+            (b'N', b"  12.50", Cell::Real(12.5)),
+            (b'N', b"      ", Cell::Null),
+            (b'N', b"\0\0\0", Cell::Null),
+            (b'N', b"******", Cell::Null),
+            (b'N', b" 1,234", text("1,234")),
+            (b'N', b" nan", text("nan")),
+            (b'N', b" inf", text("inf")),
+            (b'N', b"1e999", text("1e999")),
+            (b'N', b"  -", text("-")),
+            (b'F', b"1234.56789012", Cell::Real(1234.56789012)),
+            (b'F', b"1.5e-3", Cell::Real(0.0015)),
+            (b'C', b"  a b  ", text("  a b")),
+            (b'C', b"12  ", text("12")),
+            (b'C', b"    ", Cell::Null),
+            (b'C', b"ab\0\0", text("ab")),
+            (b'L', b"T", Cell::Bool(true)),
+            (b'L', b"n", Cell::Bool(false)),
+            (b'L', b"?", Cell::Null),
+            (b'D', b"19870301", text("1987-03-01")),
+            (b'D', b"00000000", Cell::Null),
+            (b'D', b"        ", Cell::Null),
+            (b'D', b"1 March ", text("1 March")),
+            (b'I', &7_i32.to_le_bytes(), Cell::Whole(7)),
+            (b'O', &0.25_f64.to_le_bytes(), Cell::Real(0.25)),
+        ] {
+            assert_eq!(cell(kind, bytes), expected, "{}", String::from_utf8_lossy(bytes));
+        }
+    }
+
+    #[test]
+    fn wide_texts_and_headers_that_lie_are_known() {
+        // A text of 300 letters keeps its width as 44 + 256.
+        let record = [b" ".to_vec(), vec![b'a'; 300], b"1".to_vec()].concat();
+        let mut bytes = table(&[("long", b'C', 44, 1), ("n", b'N', 1, 0)], &[]);
+        bytes[4] = 1;
+        bytes[10..12].copy_from_slice(&302_u16.to_le_bytes());
+        bytes.pop();
+        bytes.extend_from_slice(&record);
+        let dbf = Dbf::new(&bytes).unwrap();
+        assert_eq!((dbf.fields[0].width, dbf.fields[1].offset), (300, 301));
+        let mut lying = table(&[("n", b'N', 9, 0)], &[b"         1"]);
+        lying[10] = 5;
+        assert!(Dbf::new(&lying).unwrap_err().contains("wider"));
+    }
+
+    #[test]
+    fn a_table_cut_anywhere_is_refused() {
+        let whole = table(&[("a", b'C', 3, 0), ("b", b'N', 4, 1)], &[b" abc 1.5", b"*xyz    "]);
+        for end in 0..whole.len() - 1 {
+            assert!(Dbf::new(&whole[..end]).is_err(), "{end}");
+        }
+        assert!(Dbf::new(&whole).unwrap().is_deleted(1));
+    }
+}

@@ -251,3 +251,160 @@ fn system(path: &Path, files: &Files, packed: &Packed, findings: &mut Vec<Findin
     findings.push(Finding::new(Code::CrsAssumed, message.into()).severity(severity));
     Ok(crs)
 }
+
+#[cfg(test)]
+mod tests {
+    use super::super::dbf::tests::table;
+    use super::*;
+    use crate::layers::layer::Shape;
+
+    /// Shapes as bytes: each the content of its record.
+    fn shapes(code: u32, contents: &[Vec<u8>]) -> Vec<u8> {
+        let mut bytes = vec![0; 100];
+        for (place, content) in contents.iter().enumerate() {
+            bytes.extend_from_slice(&(place as u32 + 1).to_be_bytes());
+            bytes.extend_from_slice(&(content.len() as u32 / 2).to_be_bytes());
+            bytes.extend_from_slice(content);
+        }
+        let words = bytes.len() as u32 / 2;
+        bytes[..4].copy_from_slice(&9994_u32.to_be_bytes());
+        bytes[24..28].copy_from_slice(&words.to_be_bytes());
+        bytes[28..32].copy_from_slice(&1000_u32.to_le_bytes());
+        bytes[32..36].copy_from_slice(&code.to_le_bytes());
+        bytes
+    }
+
+    fn line(parts: &[u32], xy: &[f64]) -> Vec<u8> {
+        let mut bytes = 3_u32.to_le_bytes().to_vec();
+        bytes.extend_from_slice(&[0; 32]);
+        bytes.extend_from_slice(&(parts.len() as u32).to_le_bytes());
+        bytes.extend_from_slice(&(xy.len() as u32 / 2).to_le_bytes());
+        parts
+            .iter()
+            .for_each(|part| bytes.extend_from_slice(&part.to_le_bytes()));
+        xy.iter()
+            .for_each(|value| bytes.extend_from_slice(&value.to_le_bytes()));
+        bytes
+    }
+
+    fn town() -> Files {
+        let lines = [
+            line(&[0], &[1.0, 2.0, 3.0, 4.0]),
+            0_u32.to_le_bytes().to_vec(),
+            line(&[0, 2], &[0.0, 0.0, 900.0, 900.0, 5.0, 5.0]),
+            line(&[0], &[7.0, 7.0]),
+            line(&[0], &[f64::NAN, 7.0, 1.0, f64::INFINITY]),
+        ];
+        let records: [&[u8]; 5] = [b" 1M\xfcller", b" 2abc   ", b" 3      ", b" 4x     ", b"*5gone  "];
+        Files {
+            shp: shapes(3, &lines),
+            shx: None,
+            dbf: Some(table(&[("ID", b'N', 1, 0), ("ID", b'C', 6, 0)], &records)),
+            prj: None,
+            cpg: None,
+            paths: vec![("shp", PathBuf::from("town.shp"))],
+            sha256: String::new(),
+        }
+    }
+
+    fn read(files: &Files) -> Result<Checked<Layer>, Error> {
+        let wanted = Wanted {
+            columns: Columns::All,
+            heights: false,
+            encoding: None,
+        };
+        read_files(Path::new("town.shp"), 0, files, &wanted)
+    }
+
+    #[test]
+    fn rows_columns_and_doubts_are_read() {
+        let read = read(&town()).unwrap();
+        let layer = read.value;
+        assert_eq!(layer.rows(), 4, "the deleted record is no row");
+        assert_eq!(layer.column_names, ["ID", "ID"]);
+        assert_eq!(layer.columns[1].cells[0], Cell::Text("Müller".into()));
+        assert_eq!(layer.columns[1].cells[2], Cell::Null);
+        assert_eq!(layer.shape(1), Shape::Missing);
+        let Shape::Lines { vertices, starts } = layer.shape(2) else {
+            panic!("lines")
+        };
+        assert_eq!((vertices.len(), starts), (3, &[0, 2][..]));
+        let Shape::Lines { vertices, .. } = layer.shape(3) else {
+            panic!("a line of one vertex is kept")
+        };
+        assert_eq!(vertices, [[7.0, 7.0]]);
+        let codes: Vec<Code> = read.findings.iter().map(|finding| finding.code).collect();
+        assert_eq!(codes, [Code::EncodingDoubtful, Code::CrsAssumed]);
+        assert!(!layer.crs.is_lon_lat);
+    }
+
+    #[test]
+    fn not_finite_coordinates_make_their_row_not_finite() {
+        let mut files = town();
+        files.dbf = None;
+        let layer = read(&files).unwrap().value;
+        assert_eq!((layer.rows(), layer.shape(4)), (5, Shape::NotFinite));
+        assert!(layer.column_names.is_empty());
+    }
+
+    #[test]
+    fn small_coordinates_without_a_prj_are_degrees() {
+        let mut files = town();
+        files.dbf = None;
+        files.shp = shapes(3, &[line(&[0], &[15.1, 48.2, 15.11, 48.21])]);
+        let read = read(&files).unwrap();
+        assert!(read.value.crs.is_lon_lat);
+        assert_eq!(read.findings[0].code, Code::CrsAssumed);
+    }
+
+    #[test]
+    fn files_cut_or_at_odds_are_errors() {
+        let whole = town();
+        for end in 0..whole.shp.len() {
+            let mut files = town();
+            files.shp.truncate(end);
+            assert!(read(&files).is_err(), "shp cut at {end}");
+        }
+        let table = whole.dbf.clone().unwrap();
+        for end in 0..table.len() - 1 {
+            let mut files = town();
+            files.dbf = Some(table[..end].to_vec());
+            assert!(read(&files).is_err(), "dbf cut at {end}");
+        }
+        let mut files = town();
+        files.dbf.as_mut().unwrap()[4] = 4;
+        assert!(
+            read(&files)
+                .unwrap_err()
+                .to_string()
+                .contains("5 shapes, but its attribute table has 4 rows")
+        );
+        let mut files = town();
+        files.prj = Some(b"PROJCS[\"cut".to_vec());
+        assert!(read(&files).unwrap_err().to_string().contains("cut short"));
+        let mut files = town();
+        files.dbf = None;
+        files.shp.extend_from_slice(&[0; 12]);
+        assert!(read(&files).unwrap_err().to_string().contains("header says"));
+    }
+
+    #[test]
+    fn damaged_bytes_never_panic() {
+        let whole = town();
+        for place in 0..whole.shp.len() {
+            for value in [0, 1, 0x7f, 0xff] {
+                let mut files = town();
+                files.shp[place] = value;
+                let _ = read(&files);
+            }
+        }
+        let length = whole.dbf.as_ref().unwrap().len();
+        for place in 0..length {
+            for value in [0, 1, 0x2a, 0x7f, 0xff] {
+                let mut files = town();
+                files.dbf.as_mut().unwrap()[place] = value;
+                let _ = read(&files);
+            }
+        }
+    }
+}
