@@ -1,5 +1,7 @@
 //! The one test binary. Each module is one kind of test.
 
+mod columns;
+mod generated;
 mod hydraulic;
 mod numbers;
 mod properties;
