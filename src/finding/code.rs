@@ -185,6 +185,10 @@ codes! {
         "Two mains lie on one another and differ in diameter, year or zone."
         "Only one can be right, or the old one was never marked abandoned; the smaller is calculated."
         "Find out which one is in use and mark the other."
+    MainsOverlap "mains-overlap" Map Warning
+        "Two mains lie on one another over a part of their length."
+        "One of them is drawn too far, or the same main is in the map twice in other pieces; both were calculated."
+        "See where each main really ends and correct the drawing."
     EndJoined "end-joined" Map Note
         "Two ends that do not quite meet were joined, being within the tolerance."
         "Joined is the likelier reading; if they are really apart, water is shown where none flows."

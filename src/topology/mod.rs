@@ -1,6 +1,40 @@
 //! Topology: from a drawing to parts and nodes, by a visible list of named cleaning steps (`cleaning.rs`).
+//!
+//! Everything works in the local plane, in metres. Nothing here depends on the row a main stands in or on the direction it
+//! is drawn in: ties are broken by geometry.
 
-use crate::assets::Point;
+mod cleaning;
+mod crossings;
+mod customers;
+mod cutting;
+mod duplicates;
+mod exact_ends;
+mod geometry;
+mod hydrants;
+mod invariants;
+mod joined;
+mod lines;
+mod marks;
+mod multipart;
+mod near_joins;
+mod near_misses;
+mod node_points;
+mod overshoots;
+mod pieces;
+mod self_loops;
+mod short_mains;
+mod tolerance;
+mod touching;
+mod undrawn;
+mod valves;
+mod web;
+mod zones;
+
+#[cfg(test)]
+mod tests;
+
+use crate::assets::{Assets, Point};
+use crate::finding::Checked;
 
 /// How mains are joined. Every threshold of this room.
 #[derive(Clone, Debug, PartialEq)]
@@ -198,6 +232,12 @@ pub struct StepCount {
     pub count: u32,
 }
 
+/// Cleans the drawing step by step, says which mains connect, and cuts them into parts between nodes. Bad drawing is never
+/// an error: it becomes a finding on the user's own feature.
+pub fn infer(assets: &Assets, settings: &JoinSettings) -> Checked<PipeMap> {
+    cleaning::clean(assets, settings)
+}
+
 /// Which mains connect, and where everything stands on them.
 #[derive(Clone, Debug, Default)]
 pub struct PipeMap {
@@ -227,9 +267,4 @@ pub struct PipeMap {
     pub tolerance: Option<ToleranceTable>,
     /// What each cleaning step did, in order.
     pub steps: Vec<StepCount>,
-}
-
-/// Assets in, pipe map out. Stands here until the room's own entry lands.
-pub fn infer(_assets: &crate::assets::Assets, _settings: &JoinSettings) -> crate::finding::Checked<PipeMap> {
-    unimplemented!()
 }
