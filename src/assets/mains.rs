@@ -95,8 +95,8 @@ impl Desk<'_> {
         }
         for (word, features) in by_word(unknown) {
             let said = format!(
-                "{} mains have the kind `{word}`, which is not known here; they count as any main",
-                features.len()
+                "the kind `{word}` ({}) is not known here and counts as any main",
+                Role::Main.counted(features.len())
             );
             self.report_together(Code::ValueUnreadable, Severity::Note, &features, said.into());
         }
@@ -248,8 +248,8 @@ impl Desk<'_> {
         let frictions = frictions.collect();
         for (word, features) in by_word(unknown) {
             let said = format!(
-                "the material `{word}` of {} mains is not in the table of materials",
-                features.len()
+                "the material `{word}` of {} is not in the table of materials",
+                Role::Main.counted(features.len())
             );
             self.report_together(Code::MaterialUnknown, Severity::Note, &features, said.into());
         }

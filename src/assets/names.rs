@@ -20,6 +20,11 @@ pub enum Role {
 }
 
 impl Role {
+    /// Some of them, counted: `1 main`, `2 mains`.
+    pub(super) fn counted(self, count: usize) -> String {
+        format!("{count} {}{}", self.word(), if count == 1 { "" } else { "s" })
+    }
+
     /// One of them, as it is called in a sentence.
     pub fn word(self) -> &'static str {
         match self {

@@ -60,8 +60,8 @@ impl Desk<'_> {
         }
         for (word, features) in by_word(unknown) {
             let said = format!(
-                "{} nodes have the kind `{word}`, which is not known here; they count as plain nodes",
-                features.len()
+                "the kind `{word}` ({}) is not known here and counts as a plain node",
+                Role::Node.counted(features.len())
             );
             self.report_together(Code::ValueUnreadable, Severity::Note, &features, said.into());
         }

@@ -37,9 +37,8 @@ impl Desk<'_> {
             if status_is_use {
                 for (word, features) in by_word(unknown) {
                     let said = format!(
-                        "{} {}s have the status `{word}`, which is not known here; they take part",
-                        features.len(),
-                        role.word()
+                        "the status `{word}` ({}) is not known here and leaves nothing out",
+                        role.counted(features.len())
                     );
                     self.report_together(Code::ValueUnreadable, Severity::Note, &features, said.into());
                 }
@@ -87,7 +86,11 @@ impl Desk<'_> {
             if self.names.role(rule.features[0].layer) != Some(Role::Main) {
                 continue;
             }
-            let said = Sentence::new().text(format!("{} mains are left out: {}", rule.features.len(), rule.rule));
+            let said = Sentence::new().text(format!(
+                "left out by a rule: {} whose {}",
+                Role::Main.counted(rule.features.len()),
+                rule.rule
+            ));
             self.report_together(Code::MainsLeftOut, Severity::Note, &rule.features, said);
         }
         self.left_out = rules;

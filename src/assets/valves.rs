@@ -51,8 +51,8 @@ impl Desk<'_> {
         }
         for (word, features) in by_word(unknown) {
             let said = format!(
-                "{} valves have the kind `{word}`, which is not known here; they count as gate valves",
-                features.len()
+                "the kind `{word}` ({}) is not known here and counts as a gate valve",
+                Role::Valve.counted(features.len())
             );
             self.report_together(Code::ValueUnreadable, Severity::Note, &features, said.into());
         }

@@ -1,6 +1,7 @@
 //! The one test binary. Each module is one kind of test.
 
 mod columns;
+mod command;
 mod damaged_files;
 mod generated;
 mod hydraulic;
