@@ -35,7 +35,7 @@ pub fn pick(town: &Town, lcg: &mut Lcg, fits: impl Fn(&Main, usize) -> bool) -> 
 }
 
 /// A street's main with nothing standing on its middle.
-fn plain(town: &Town, main: &Main) -> bool {
+pub fn plain(town: &Town, main: &Main) -> bool {
     let line = main.line().expect("drawn");
     let free = |place: Point| nearest_on(line, place).distance > 4.0;
     main.street != usize::MAX

@@ -1,8 +1,8 @@
 //! Faults of hydrants, customers, valves and node points.
 
-use super::faults::{on, pick, rests_on_loop};
+use super::faults::{on, pick, plain, rests_on_loop};
 use super::lcg::Lcg;
-use super::plane::{Point, add, cross, direction, distance, place_along, scale};
+use super::plane::{Point, add, left, length, place_along, scale};
 use super::town::{
     Customer, FIRST_CUSTOMER_ID, FIRST_HYDRANT_ID, FIRST_NODE_ID, FIRST_VALVE_ID, Hydrant, Node, Town, Valve,
 };
@@ -11,7 +11,7 @@ use super::town::{
 pub fn plant_all(town: &mut Town, lcg: &mut Lcg) {
     closed_valves(town, lcg);
     valves(town, lcg);
-    hydrants_between(town);
+    hydrants_between(town, lcg);
     off_main(town);
     node_points(town);
 }
@@ -97,53 +97,42 @@ fn valves(town: &mut Town, lcg: &mut Lcg) {
     }
 }
 
-/// A hydrant in the corner of two mains of different size.
-fn hydrants_between(town: &mut Town) {
-    let mut made = 0;
-    for node in (5..town.nodes.len()).step_by(7) {
-        let here = town.mains_at(node);
-        if made == 2 || here.len() != 3 || town.ends_and_tees(node) != (3, 0) {
-            continue;
-        }
-        let centre = town.nodes[node].at;
-        let away = |main: usize| {
-            let line = town.mains[main].line()?;
-            let from_start = town.mains[main].ends[0] == node;
-            Some(if from_start {
-                direction(line[0], line[1])
-            } else {
-                direction(line[line.len() - 1], line[line.len() - 2])
+/// An old main and a larger new one in the same street, and a hydrant half way between them.
+fn hydrants_between(town: &mut Town, lcg: &mut Lcg) {
+    const APART_M: f64 = 2.4;
+    for _ in 0..2 {
+        let index = pick(town, lcg, |main, _| {
+            plain(town, main) && main.diameter_in == Some(4.0) && main.length_m() > 90.0
+        });
+        let old = town.mains[index].line().expect("drawn").clone();
+        let mut new = town.mains[index].clone();
+        let beside: Vec<Point> = (1..=9)
+            .map(|tenth| {
+                let (at, ahead) = place_along(&old, 0.1 * f64::from(tenth) * length(&old));
+                add(at, scale(left(ahead), APART_M))
             })
-        };
-        let corner = here
-            .iter()
-            .flat_map(|a| here.iter().map(move |b| (*a, *b)))
-            .find_map(|(a, b)| {
-                let (one, other) = (away(a)?, away(b)?);
-                let fits = |main: usize| town.mains[main].feeds() && !town.mains[main].planted;
-                let square = cross(one, other) > 0.8;
-                (fits(a) && fits(b) && square && town.mains[a].diameter_in < town.mains[b].diameter_in)
-                    .then_some((a, b, one, other))
-            });
-        let Some((a, b, one, other)) = corner else { continue };
-        let at = add(centre, scale(add(one, other), 0.9));
-        if town.hydrants.iter().any(|hydrant| distance(hydrant.at, at) < 60.0) {
-            continue;
-        }
-        made += 1;
-        let names = format!("{} {}", town.main_name(a), town.main_name(b));
-        let zone = town.mains[a].zone;
-        for main in [a, b] {
+            .collect();
+        let ends = [&old[..1], &beside, &old[old.len() - 1..]];
+        new.set_line(ends.concat());
+        (new.diameter_in, new.material, new.year, new.c_factor) = (Some(8.0), "PVC", Some(2011), Some(147.0));
+        new.stored_length_m = None;
+        let new = town.add_main(new);
+        for main in [index, new] {
             town.mains[main].planted = true;
         }
+        let (at, ahead) = place_along(&old, 0.55 * length(&old));
+        let at = add(at, scale(left(ahead), 0.5 * APART_M));
+        let names = format!("{} {}", town.main_name(index), town.main_name(new));
+        let zone = town.mains[index].zone;
         let id = add_hydrant(town, at, zone);
+        let note = "as near to a smaller main as to a larger";
         on(
             town,
             "hydrants",
             id,
             ["hydrant between two mains", "hydrant-between-mains"],
             names,
-            "as near to a smaller main as to a larger",
+            note,
         );
     }
 }
