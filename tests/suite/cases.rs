@@ -129,7 +129,9 @@ impl Came<'_> {
         for pair in expected.apart.iter().filter(|pair| connected.contains(*pair)) {
             wrong.push(format!("{} and {} are connected", pair[0], pair[1]));
         }
-        let Some(wanted) = &expected.connected else { return wrong };
+        let Some(wanted) = &expected.connected else {
+            return wrong;
+        };
         let wanted: BTreeSet<[String; 2]> = wanted.iter().cloned().collect();
         for pair in wanted.difference(&connected) {
             wrong.push(format!("{} and {} are not connected", pair[0], pair[1]));
@@ -143,10 +145,19 @@ impl Came<'_> {
     fn wrong_counts(&self, expected: &Expected) -> Vec<String> {
         let mut wrong = Vec::new();
         if self.map.piece_length_m.len() != expected.pieces {
-            wrong.push(format!("{} pieces, not {}", self.map.piece_length_m.len(), expected.pieces));
+            wrong.push(format!(
+                "{} pieces, not {}",
+                self.map.piece_length_m.len(),
+                expected.pieces
+            ));
         }
         for (main, count) in &expected.parts_of {
-            let parts = self.map.parts.iter().filter(|part| self.main(part.main) == *main).count();
+            let parts = self
+                .map
+                .parts
+                .iter()
+                .filter(|part| self.main(part.main) == *main)
+                .count();
             if parts != *count {
                 wrong.push(format!("{main} has {parts} parts, not {count}"));
             }
@@ -164,15 +175,29 @@ impl Came<'_> {
     /// The main that each hydrant and customer draws from.
     fn drawn_from(&self) -> BTreeMap<String, String> {
         let assets = &self.outcome.reading.assets;
-        let hydrants = assets.hydrants.iter().map(|hydrant| hydrant.origin).zip(&self.map.hydrants);
-        let customers = assets.customers.iter().map(|customer| customer.origin).zip(&self.map.customers);
-        let taps = hydrants.chain(customers).filter_map(|(origin, tap)| Some((origin, (*tap)?)));
-        taps.map(|(origin, tap)| (self.name(origin), self.main(tap.main))).collect()
+        let hydrants = assets
+            .hydrants
+            .iter()
+            .map(|hydrant| hydrant.origin)
+            .zip(&self.map.hydrants);
+        let customers = assets
+            .customers
+            .iter()
+            .map(|customer| customer.origin)
+            .zip(&self.map.customers);
+        let taps = hydrants
+            .chain(customers)
+            .filter_map(|(origin, tap)| Some((origin, (*tap)?)));
+        taps.map(|(origin, tap)| (self.name(origin), self.main(tap.main)))
+            .collect()
     }
 
     fn wrong_findings(&self, expected: &Expected) -> Vec<String> {
-        let (loud, quiet): (Vec<&Finding>, Vec<&Finding>) =
-            self.outcome.findings.iter().partition(|finding| finding.severity >= Severity::Warning);
+        let (loud, quiet): (Vec<&Finding>, Vec<&Finding>) = self
+            .outcome
+            .findings
+            .iter()
+            .partition(|finding| finding.severity >= Severity::Warning);
         let mut wrong = Vec::new();
         let mut left = loud;
         for wanted in &expected.findings {
@@ -181,7 +206,10 @@ impl Came<'_> {
                 None => wrong.push(format!("there is no finding {wanted:?}")),
             }
         }
-        wrong.extend(left.iter().map(|finding| format!("there is also {}", self.told(finding))));
+        wrong.extend(
+            left.iter()
+                .map(|finding| format!("there is also {}", self.told(finding))),
+        );
         for wanted in &expected.notes {
             if !quiet.iter().any(|finding| self.is(finding, wanted)) {
                 wrong.push(format!("there is no note {wanted:?}"));
@@ -192,14 +220,29 @@ impl Came<'_> {
 
     fn is(&self, finding: &Finding, wanted: &ExpectedFinding) -> bool {
         let first = finding.feature.map(|feature| self.name(feature));
-        let all: BTreeSet<String> = finding.feature.iter().chain(&finding.others).map(|it| self.name(*it)).collect();
+        let all: BTreeSet<String> = finding
+            .feature
+            .iter()
+            .chain(&finding.others)
+            .map(|it| self.name(*it))
+            .collect();
         finding.code.text().name == wanted.code
             && first.is_some_and(|first| wanted.features.contains(&first))
             && wanted.features.iter().all(|feature| all.contains(feature))
     }
 
     fn told(&self, finding: &Finding) -> String {
-        let all: Vec<String> = finding.feature.iter().chain(&finding.others).map(|it| self.name(*it)).collect();
-        format!("{} ({}) on {}", finding.code.text().name, finding.severity.word(), all.join(", "))
+        let all: Vec<String> = finding
+            .feature
+            .iter()
+            .chain(&finding.others)
+            .map(|it| self.name(*it))
+            .collect();
+        format!(
+            "{} ({}) on {}",
+            finding.code.text().name,
+            finding.severity.word(),
+            all.join(", ")
+        )
     }
 }
