@@ -104,7 +104,7 @@ impl Crs {
         if horizontal.keyword == "GEOCCS" || in_other_angles(horizontal) {
             return None;
         }
-        let (projection, obstacle) = with_datum(definition.proj4, None);
+        let (projection, obstacle) = with_datum(definition.proj4, None, None);
         let proj = Proj::from_proj_string(&projection).ok()?;
         let is_lon_lat = proj.is_latlong();
         Some(Crs {
@@ -130,7 +130,7 @@ impl Crs {
         }
         let described = proj4wkt::wkt_to_projstring(&horizontal.print()).ok();
         let (projection, obstacle) = match &described {
-            Some(projection) => with_datum(projection, datum_name(horizontal)),
+            Some(projection) => with_datum(projection, datum_name(horizontal), tie_of(horizontal)),
             None => (
                 String::new(),
                 Some("its projection is not one that is known here".to_string()),
@@ -274,7 +274,7 @@ fn unit_m(horizontal: &wkt::Item) -> Option<f64> {
     (unit.is_finite() && unit > 0.0).then_some(unit)
 }
 
-fn datum_name(horizontal: &wkt::Item) -> Option<&str> {
+fn datum_item(horizontal: &wkt::Item) -> Option<&wkt::Item> {
     const GEOGRAPHIC: [&str; 7] = [
         "GEOGCS",
         "GEOGCRS",
@@ -285,80 +285,98 @@ fn datum_name(horizontal: &wkt::Item) -> Option<&str> {
         "BASEGEOGCRS",
     ];
     let geographic = horizontal.child(&GEOGRAPHIC).unwrap_or(horizontal);
-    geographic.child(&["DATUM", "GEODETICDATUM", "TRF", "ENSEMBLE"])?.name()
+    geographic.child(&["DATUM", "GEODETICDATUM", "TRF", "ENSEMBLE"])
+}
+
+fn datum_name(horizontal: &wkt::Item) -> Option<&str> {
+    datum_item(horizontal)?.name()
 }
 
 /// A projection whose datum is tied to WGS 84 as well as is known without grids, or the reason why it is not.
 ///
-/// A datum on the ellipsoids GRS 1980 or WGS 84 (NAD83, ETRS89, GDA94, NZGD2000 …) is taken to agree with WGS 84, as is
-/// usual without grids: 1 to 2 m on the ground, and nothing at all between layers of one datum.
-fn with_datum(projection: &str, datum: Option<&str>) -> (String, Option<String>) {
+/// A datum on the ellipsoids GRS 1980 or WGS 84 (NAD83, ETRS89, GDA94, NZGD2000 …) of which no tie is published is taken
+/// to agree with WGS 84, as is usual without grids: 1 to 2 m on the ground, and nothing between layers of one datum.
+fn with_datum(projection: &str, datum: Option<&str>, tie: Option<String>) -> (String, Option<String>) {
     let mut tokens: Vec<String> = projection.split_whitespace().map(String::from).collect();
     let has = |tokens: &[String], start: &str| tokens.iter().any(|token| token.starts_with(start));
     let nad27 = datum.is_some_and(|name| plain(name).contains("northamerican") && name.contains("1927"))
         || tokens.iter().any(|token| token == "+datum=NAD27");
-    // New Zealand's grid file ties NZGD49 more closely than its seven parameters; without grids they have to do.
-    for token in &mut tokens {
-        if token.contains("nzgd2kgrid") {
-            *token = "+towgs84=59.47,-5.04,187.44,0.47,-0.1,1.024,-4.5993".into();
-        }
-    }
     if nad27 {
         tokens.retain(|token| !token.starts_with("+datum=") && !token.starts_with("+nadgrids="));
         if !has(&tokens, "+a=") && !has(&tokens, "+ellps=") {
             tokens.push("+ellps=clrk66".into());
         }
-        return (
-            tokens.join(" "),
-            Some(
-                "it is on the 1927 North American datum, which needs a grid of shifts that is not part of this program"
-                    .into(),
-            ),
-        );
+        let why =
+            "it is on the 1927 North American datum, which needs a grid of shifts that is not part of this program";
+        return (tokens.join(" "), Some(why.into()));
     }
-    if !has(&tokens, "+towgs84=") && !has(&tokens, "+datum=") && !has(&tokens, "+nadgrids=@null") {
-        if has(&tokens, "+ellps=GRS80") || has(&tokens, "+ellps=WGS84") {
-            tokens.push("+towgs84=0,0,0".into());
-        } else if let Some(tie) = datum.and_then(tie_of_datum) {
-            tokens.push(tie);
-        } else {
-            let name = datum.unwrap_or("its datum").replace('_', " ");
-            return (
-                tokens.join(" "),
-                Some(format!("how {name} lies on the earth is not known here")),
-            );
-        }
+    if let Some(tie) = tie {
+        tokens.retain(|token| !token.starts_with("+towgs84="));
+        tokens.push(tie);
     }
-    (tokens.join(" "), None)
+    // New Zealand's grid file ties NZGD49 more closely than its seven parameters; without grids they have to do.
+    for token in tokens.iter_mut().filter(|token| token.contains("nzgd2kgrid")) {
+        *token = "+towgs84=59.47,-5.04,187.44,0.47,-0.1,1.024,-4.5993".into();
+    }
+    if has(&tokens, "+towgs84=") || has(&tokens, "+datum=") || has(&tokens, "+nadgrids=@null") {
+        return (tokens.join(" "), None);
+    }
+    if has(&tokens, "+ellps=GRS80") || has(&tokens, "+ellps=WGS84") {
+        tokens.push("+towgs84=0,0,0".into());
+        return (tokens.join(" "), None);
+    }
+    let name = datum.unwrap_or("its datum").replace('_', " ");
+    (
+        tokens.join(" "),
+        Some(format!("how {name} lies on the earth is not known here")),
+    )
 }
 
-/// The published tie of a datum to WGS 84, found by the datum's name among the definitions by code.
-fn tie_of_datum(datum: &str) -> Option<String> {
-    let wanted = plain(datum);
+/// Datums that vendors name otherwise than the definitions by code do.
+const OTHER_NAMES: [(&str, &str); 6] = [
+    ("belge1972", "reseaunationalbelge1972"),
+    ("ggrs1987", "greekgeodeticreferencesystem1987"),
+    ("hungarian1972", "hungariandatum1972"),
+    ("mgi", "militargeographischeinstitute"),
+    ("ordnancesurveyofgreatbritain1936", "osgb1936"),
+    ("sjtsk", "systemjednotnetrigonometrickesitekatastralni"),
+];
+
+/// The published tie of a system's datum to WGS 84, where its own text has none: found by the system's code, else by the
+/// datum's name among the definitions by code.
+fn tie_of(horizontal: &wkt::Item) -> Option<String> {
+    if datum_item(horizontal)?.child(&["TOWGS84"]).is_some() {
+        return None;
+    }
+    if let Some(code) = horizontal.epsg().and_then(|code| u16::try_from(code).ok()) {
+        let root = wkt::parse(crs_definitions::from_code(code)?.wkt)?;
+        return shift_of(root.horizontal());
+    }
+    let name = plain(datum_name(horizontal)?);
+    let wanted = OTHER_NAMES
+        .iter()
+        .find(|(other, _)| *other == name)
+        .map_or(name.as_str(), |(_, own)| own);
     // Geographic systems have the codes 4001 to 4999.
     (4001..5000).find_map(|code| {
-        let definition = crs_definitions::from_code(code)?;
-        let root = wkt::parse(definition.wkt)?;
-        if plain(datum_name(root.horizontal())?) != wanted {
-            return None;
-        }
-        let tie = definition
-            .proj4
-            .split_whitespace()
-            .find(|token| token.starts_with("+towgs84="));
-        tie.map(String::from).or_else(|| {
-            let shift = root.horizontal().child(&["DATUM"])?.child(&["TOWGS84"])?;
-            let numbers: Vec<&str> = shift
-                .values
-                .iter()
-                .filter_map(|value| match value {
-                    wkt::Value::Word(word) => Some(word.as_str()),
-                    _ => None,
-                })
-                .collect();
-            Some(format!("+towgs84={}", numbers.join(",")))
-        })
+        let root = wkt::parse(crs_definitions::from_code(code)?.wkt)?;
+        let is_it = datum_name(root.horizontal()).is_some_and(|name| plain(name) == wanted);
+        is_it.then(|| shift_of(root.horizontal())).flatten()
     })
+}
+
+/// The shift to WGS 84 that a text states, as the transforming library takes it.
+fn shift_of(horizontal: &wkt::Item) -> Option<String> {
+    let shift = datum_item(horizontal)?.child(&["TOWGS84"])?;
+    let numbers: Vec<&str> = shift
+        .values
+        .iter()
+        .filter_map(|value| match value {
+            wkt::Value::Word(word) => Some(word.as_str()),
+            _ => None,
+        })
+        .collect();
+    Some(format!("+towgs84={}", numbers.join(",")))
 }
 
 /// A datum's name without the prefix, case and marks that vendors spell differently.
@@ -460,6 +478,100 @@ mod tests {
         );
         let nad27 = bare.replace("D_OSGB_1936", "D_North_American_1927");
         assert!(Crs::of_prj(&nad27).unwrap().obstacle.unwrap().contains("1927"));
+    }
+
+    #[test]
+    fn systems_by_code_and_by_text_agree_with_an_independent_implementation() {
+        // PROJ 9.5.1 without grids: a place in each system and its longitude and latitude on WGS 84.
+        let truth: [(u16, [f64; 2], [f64; 2]); 17] = [
+            (
+                2264,
+                [1_744_617.995_9, 532_455.953_9],
+                [-79.855_000_000, 35.210_000_000],
+            ), // NAD83 / North Carolina (ftUS)
+            (
+                2225,
+                [6_500_762.569_6, 2_174_791.409_1],
+                [-122.220_000_000, 40.800_000_000],
+            ), // NAD83 / California zone 1 (ftUS)
+            (
+                2222,
+                [636_986.550_8, 1_153_309.196_4],
+                [-110.375_000_000, 34.170_000_000],
+            ), // NAD83 / Arizona East (ft)
+            (
+                2272,
+                [2_003_290.567_0, 404_990.811_4],
+                [-77.625_000_000, 40.445_000_000],
+            ), // NAD83 / Pennsylvania South (ftUS)
+            (
+                26931,
+                [709_022.227_6, 630_020.600_4],
+                [-135.495_000_000, 57.480_000_000],
+            ), // NAD83 / Alaska zone 1
+            (
+                3338,
+                [1_707_621.285_2, 7_905_795.526_0],
+                [21.215_000_000, 61.350_000_000],
+            ), // NAD83 / Alaska Albers
+            (
+                32633,
+                [500_000.000_0, 4_649_776.224_8],
+                [15.000_000_000, 42.000_000_000],
+            ), // WGS 84 / UTM zone 33N
+            (
+                32755,
+                [500_000.000_0, 5_572_242.781_3],
+                [147.000_000_000, -40.000_000_000],
+            ), // WGS 84 / UTM zone 55S
+            (3857, [0.000_0, 0.000_0], [0.000_000_000, 0.000_000_000]), // WGS 84 / Pseudo-Mercator
+            (27700, [304_969.207_4, 610_584.993_7], [-3.501_360_742, 55.380_006_168]), // OSGB36 / British National Grid
+            (28992, [142_863.978_8, 470_673.112_5], [5.209_591_047, 52.224_003_945]), // Amersfoort / RD New
+            (31370, [155_853.553_4, 132_631.754_8], [4.451_263_097, 50.504_445_060]), // BD72 / Belgian Lambert 72
+            (
+                2056,
+                [2_659_933.418_7, 1_185_026.714_1],
+                [8.223_931_148, 46.813_700_555],
+            ), // CH1903+ / LV95
+            (2100, [494_317.670_4, 4_240_767.862_1], [23.936_708_874, 38.317_594_060]), // GGRS87 / Greek Grid
+            (
+                2193,
+                [1_557_768.544_8, 5_492_759.657_4],
+                [172.500_000_000, -40.715_000_000],
+            ), // NZGD2000 / New Zealand Transverse Mercator 2000
+            (
+                31983,
+                [500_000.000_0, 8_431_813.455_3],
+                [-45.000_000_000, -14.185_000_000],
+            ), // SIRGAS 2000 / UTM zone 23S
+            (2046, [53_858.502_9, 2_535_220.466_8], [14.475_000_000, -22.915_000_000]), // Hartebeesthoek94 / Lo15
+        ];
+        for (code, xy, [lon, lat]) in truth {
+            let definition = crs_definitions::from_code(code).unwrap();
+            let by_code = Crs::parse(&format!("EPSG:{code}")).unwrap();
+            for crs in [by_code, Crs::of_prj(definition.wkt).unwrap()] {
+                let mut place = [xy];
+                convert(&crs, &Crs::lon_lat(), &mut place).unwrap();
+                // A degree of latitude is 111 km.
+                let east = (place[0][0] - lon) * 111e3 * lat.to_radians().cos();
+                let north = (place[0][1] - lat) * 111e3;
+                assert!(east.hypot(north) < 0.01, "{code}: {} m", east.hypot(north));
+            }
+        }
+    }
+
+    #[test]
+    fn a_datum_is_known_by_its_vendors_name_too() {
+        let definition = crs_definitions::from_code(2100).unwrap().wkt;
+        let bare = definition
+            .replace("TOWGS84[-199.87,74.79,246.62,0,0,0,0],", "")
+            .replace("Greek_Geodetic_Reference_System_1987", "D_GGRS_1987")
+            .replace("AUTHORITY[\"EPSG\",\"2100\"]", "AUTHORITY[\"NONE\",\"1\"]");
+        assert!(!bare.contains("TOWGS84") && bare.contains("D_GGRS_1987"));
+        let mut places = [[500_000.0, 4_200_000.0]; 2];
+        convert(&Crs::of_prj(definition).unwrap(), &Crs::lon_lat(), &mut places[..1]).unwrap();
+        convert(&Crs::of_prj(&bare).unwrap(), &Crs::lon_lat(), &mut places[1..]).unwrap();
+        assert_eq!(places[0], places[1]);
     }
 
     #[test]
