@@ -9,6 +9,9 @@ use crate::network::{Friction, Part};
 /// Head loss below which the Hazen-Williams law is replaced, m: see [`HeadLoss`].
 pub const STRAIGHT_BELOW_M: f64 = 1e-8;
 
+/// Share of its wanted flow below which an outflow's slope is taken as if it were this share: the law is flat at no flow.
+const FLATTEST_SHARE: f64 = 1e-5;
+
 /// Head lost along a part as a function of flow: odd, strictly increasing, once continuously differentiable.
 ///
 /// A Hazen-Williams law has no slope at zero flow, which leaves a flow of zero without a stable answer. Where the loss of
@@ -38,6 +41,13 @@ enum Law {
         reynolds_per_flow: f64,
         relative_roughness: f64,
         laminar: f64,
+    },
+    /// h = least + rise (q/wanted)^2 between no flow and the wanted one, straight and steep beyond.
+    Outflow {
+        least_m: f64,
+        rise_m: f64,
+        wanted_m3_per_s: f64,
+        stop_slope: f64,
     },
 }
 
@@ -78,6 +88,20 @@ impl HeadLoss {
             }
         };
         Self { friction, minor }
+    }
+
+    /// Outflow from a node to the open, as a part whose far end has a head of zero: the square root law of
+    /// `pressure_driven.rs`, with `stop_slope` beyond its two ends.
+    pub(super) fn outflow(least_m: f64, rise_m: f64, wanted_m3_per_s: f64, stop_slope: f64) -> Self {
+        Self {
+            friction: Law::Outflow {
+                least_m,
+                rise_m,
+                wanted_m3_per_s,
+                stop_slope,
+            },
+            minor: 0.0,
+        }
     }
 
     /// Head lost at a flow, and the slope there.
@@ -126,6 +150,22 @@ impl HeadLoss {
                     head_m: (chord + minor) * q,
                     slope: chord * (2.0 + found.log_slope) + 2.0 * minor,
                 }
+            }
+            Law::Outflow {
+                least_m,
+                rise_m,
+                wanted_m3_per_s,
+                stop_slope,
+            } => {
+                let within = q.clamp(0.0, wanted_m3_per_s);
+                let share = within / wanted_m3_per_s;
+                let head_m = least_m + rise_m * share * share + stop_slope * (q - within);
+                let slope = if q == within {
+                    2.0 * rise_m * share.max(FLATTEST_SHARE) / wanted_m3_per_s
+                } else {
+                    stop_slope
+                };
+                Loss { head_m, slope }
             }
         }
     }

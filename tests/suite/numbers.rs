@@ -448,8 +448,10 @@ fn a_published_constant_alone_turns_a_flag() {
     let hanoi = &known.network[0];
     let node = hanoi.nodes().binary_search(&"13").unwrap();
     let head = |constant| {
-        let mut settings = Settings::default();
-        settings.hazen_williams = law_of([constant, 1.852, 4.871]);
+        let settings = Settings {
+            hazen_williams: law_of([constant, 1.852, 4.871]),
+            ..Settings::default()
+        };
         hanoi.solve(settings).head_m[node]
     };
     assert!(head(10.667) > 30.0 && head(10.6744) < 30.0);

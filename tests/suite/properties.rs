@@ -2,7 +2,7 @@
 
 use std::collections::VecDeque;
 
-use gradeline::hydraulics::{Factoring, HeadLoss, Kept, Residuals, Settings, Solver, State, residuals};
+use gradeline::hydraulics::{Factoring, HeadLoss, Kept, Residuals, Settings, Solver, State, Tap, residuals};
 use gradeline::network::{Condition, Friction, Network, NodeIx, Part};
 use nalgebra::{DMatrix, DVector};
 use proptest::prelude::*;
@@ -356,6 +356,41 @@ proptest! {
         for (a, b) in ours.head_m.iter().zip(&reference.head_m) {
             near(*a, *b, 1e-7, "head")?;
         }
+    }
+
+    /// Every tap gets what its law says at the head it has, and there is one such answer.
+    #[test]
+    fn pressure_driven_taps_get_what_their_heads_give(
+        given in given(street_main, 30), times in 1.0..1000.0, rises in prop::collection::vec(5.0..30.0, 30)
+    ) {
+        let mut given = given;
+        given.condition.demand_m3_per_s.iter_mut().for_each(|demand| *demand *= times);
+        let taps: Vec<Tap> = rises.iter().enumerate().take(given.network.served.len()).map(|(node, rise)| Tap {
+            node: NodeIx(node as u32),
+            least_m: 10.0 + rise,
+            full_m: 12.0 + 2.0 * rise,
+        }).collect();
+        let found = Solver::new(&given.network, Settings::default()).solve_pressure_driven(&given.condition, &taps).unwrap();
+        for tap in &taps[given.network.sources.len()..] {
+            let wanted = given.condition.demand_m3_per_s[tap.node.at()];
+            let got = found.delivered_m3_per_s[tap.node.at()];
+            let head = found.state.head_m[tap.node.at()];
+            prop_assert!((0.0..=wanted).contains(&got));
+            if wanted > 0.0 {
+                // As heads, so that the root law's steep start is no matter.
+                let share = got / wanted;
+                let asked = tap.least_m + (tap.full_m - tap.least_m) * share * share;
+                let right = (head - asked).abs() < 1e-6
+                    || (share < 1e-4 && head < tap.least_m)
+                    || (share > 1.0 - 1e-6 && head > tap.full_m);
+                prop_assert!(right, "head {head}, {share} of {wanted} for {tap:?}");
+            }
+        }
+        let settings = Settings::default();
+        let delivered = Condition { demand_m3_per_s: found.delivered_m3_per_s, ..given.condition.clone() };
+        let state = &found.state;
+        let seen = residuals(&given.network, &settings, &delivered, &state.head_m, &state.flow_m3_per_s);
+        prop_assert!(seen.within(&settings), "{seen:?}");
     }
 
     #[test]
