@@ -50,8 +50,8 @@ impl Crs {
         }
     }
 
-    /// Plain metres in a plane of which nothing else is known.
-    pub(super) fn plain_metres() -> Crs {
+    /// Plain metres in a plane of which nothing else is known, assumed for a file.
+    pub(super) fn plain_metres(file: &str) -> Crs {
         Crs {
             name: "plane coordinates in metres (assumed)".into(),
             is_lon_lat: false,
@@ -59,7 +59,7 @@ impl Crs {
             wkt: None,
             epsg: None,
             projection: String::new(),
-            obstacle: Some("its file does not say where on the earth it lies".into()),
+            obstacle: Some(format!("{file} does not say which system it is in")),
         }
     }
 
@@ -81,7 +81,8 @@ impl Crs {
     /// As [`Crs::parse`], with the reason alone.
     pub(super) fn of_code(name: &str) -> Result<Crs, Unusable> {
         let upper = name.trim().to_ascii_uppercase();
-        if upper.ends_with("CRS84") {
+        // With heights (CRS84h, 4979) it is the same in the plane.
+        if upper.ends_with("CRS84") || upper.ends_with("CRS84H") {
             return Ok(Crs::lon_lat());
         }
         let code = upper
@@ -94,7 +95,7 @@ impl Crs {
     }
 
     fn of_epsg(code: u32) -> Option<Crs> {
-        if code == 4326 {
+        if code == 4326 || code == 4979 {
             return Some(Crs::lon_lat());
         }
         let code = if WEB_MERCATOR_TWINS.contains(&code) { 3857 } else { code };

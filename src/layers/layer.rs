@@ -244,6 +244,12 @@ pub(super) fn name_of(path: &Path) -> String {
         .map_or_else(String::new, |stem| stem.to_string_lossy().into_owned())
 }
 
+/// The file's own name, for messages.
+pub(super) fn file_name(path: &Path) -> String {
+    path.file_name()
+        .map_or_else(String::new, |name| name.to_string_lossy().into_owned())
+}
+
 /// Why a path is not read.
 fn refuse(path: &Path) -> Error {
     const READ: &str = "Give it as GeoJSON (.geojson, .json) or as a shapefile (.shp)";

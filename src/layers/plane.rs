@@ -148,7 +148,7 @@ impl LocalPlane {
             .map(|w| (w[1][0] - w[0][0]).hypot(w[1][1] - w[0][1]))
             .sum();
         let true_m = Geodesic.length(&LineString::from(lon_lat));
-        let scale = true_m * 1.0 / plane_m;
+        let scale = true_m / plane_m;
         if scale.is_finite() && scale > 0.0 { scale } else { 1.0 }
     }
 
@@ -352,7 +352,7 @@ mod tests {
         near(plane.to_plane(&nad27, &[[2e6, 1e5]]).unwrap()[0], [0.0, 0.0], 1.0);
         let error = plane.to_plane(&Crs::lon_lat(), &[[-86.0, 35.0]]).unwrap_err();
         assert!(error.to_string().contains("1927"), "{error}");
-        let unknown = Crs::plain_metres();
+        let unknown = Crs::plain_metres("town.shp");
         let plane = LocalPlane::new(&unknown, [0.0, 0.0, 10.0, 10.0]).unwrap();
         assert_eq!(plane.to_plane(&unknown, &[[7.0, 8.0]]).unwrap()[0], [2.0, 3.0]);
         assert!(plane.from_plane(&Crs::lon_lat(), &[[0.0, 0.0]]).is_err());

@@ -435,7 +435,7 @@ mod tests {
             assert_eq!(output_crs(&source, Format::GeoJson).unwrap().epsg, expected);
             assert_eq!(output_crs(&source, Format::Shapefile).unwrap(), source.crs);
         }
-        source.crs = Crs::plain_metres();
+        source.crs = Crs::plain_metres("town.shp");
         let error = output_crs(&source, Format::GeoJson).unwrap_err();
         assert!(error.to_string().contains("Write shapefiles instead"), "{error}");
     }

@@ -222,6 +222,19 @@ fn a_shapefile_without_its_side_files_says_what_it_assumes() {
     );
 }
 
+#[test]
+fn endings_are_found_in_any_case() {
+    let folder = tempfile::tempdir().unwrap();
+    let [_, path] = town(folder.path());
+    let whole = content(&read(&path).unwrap().value);
+    for ending in ["shp", "shx", "dbf", "prj", "cpg"] {
+        fs::rename(path.with_extension(ending), path.with_extension(ending.to_uppercase())).unwrap();
+    }
+    let read = read(&path.with_extension("SHP")).unwrap();
+    assert!(read.findings.is_empty());
+    assert_eq!(content(&read.value), whole);
+}
+
 /// A disk on which the n-th write of bytes fails.
 struct FullAfter {
     left: std::rc::Rc<Counter<u32>>,

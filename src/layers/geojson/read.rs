@@ -13,7 +13,7 @@ use super::{Place, Splice};
 use crate::finding::{Checked, Code, Error, Finding, Severity};
 use crate::layers::crs::Crs;
 use crate::layers::files;
-use crate::layers::layer::{Format, Layer, Replay, Source, Wanted, name_of};
+use crate::layers::layer::{Format, Layer, Replay, Source, Wanted, file_name, name_of};
 use crate::layers::packed::{Kind, Packed};
 use crate::layers::where_on_earth::{Guess, guess};
 
@@ -175,7 +175,7 @@ fn assumed(path: &Path, said_null: bool, packed: &Packed, findings: &mut Vec<Fin
         ));
     }
     let crs = if guess == Guess::Plane {
-        Crs::plain_metres()
+        Crs::plain_metres(&file_name(path))
     } else {
         Crs::lon_lat()
     };

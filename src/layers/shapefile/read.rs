@@ -8,7 +8,7 @@ use super::shapes;
 use crate::finding::{Checked, Code, Error, FeatureRef, Finding, Sentence, Severity};
 use crate::layers::crs::Crs;
 use crate::layers::files;
-use crate::layers::layer::{Cell, Column, Columns, Format, Layer, Replay, Source, Wanted, name_of};
+use crate::layers::layer::{Cell, Column, Columns, Format, Layer, Replay, Source, Wanted, file_name, name_of};
 use crate::layers::packed::Packed;
 use crate::layers::where_on_earth::{Guess, guess, spans_few_degrees};
 use crate::layers::write::changed;
@@ -240,7 +240,7 @@ fn system(path: &Path, files: &Files, packed: &Packed, findings: &mut Vec<Findin
     let crs = if is_degrees {
         Crs::lon_lat()
     } else {
-        Crs::plain_metres()
+        Crs::plain_metres(&file_name(path))
     };
     let message = format!("layer {}: there is no .prj; taken as {}", name_of(path), crs.name);
     let severity = if is_degrees {
