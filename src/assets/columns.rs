@@ -8,7 +8,7 @@ use std::collections::HashSet;
 use super::cells::{self, Number};
 use super::desk::Desk;
 use super::reading::{UnitFrom, UnitUsed};
-use super::sentinels::{Meaning, Spread, is_filler};
+use super::sentinels::{Meaning, Spread, is_filler, is_possible};
 use super::settings::{LayerColumns, UnitColumn};
 use crate::finding::{Code, Error, FeatureRef, Finding, Sentence, Severity};
 use crate::layers::Cell;
@@ -80,7 +80,10 @@ impl<'a> Desk<'a> {
                 Number::Value(value, own) if is_filler(wanted.meaning, value, spread) && own.is_none() => {
                     Slot::Empty(value.to_string())
                 }
-                Number::Value(value, own) => Slot::Value(own.unwrap_or(unit).to_si(value)),
+                Number::Value(value, own) => match own.unwrap_or(unit).to_si(value) {
+                    si if is_possible(wanted.meaning, si) => Slot::Value(si),
+                    _ => Slot::Unreadable(value.to_string()),
+                },
             };
             if wanted.taking_part[row] {
                 match &slot {
@@ -93,7 +96,7 @@ impl<'a> Desk<'a> {
         }
         let name = &column.name;
         self.report(unreadable, |count| {
-            format!("{count} rows hold something in `{name}` that is no number").into()
+            format!("{count} rows hold something in `{name}` that cannot be").into()
         });
         self.units.push(UnitUsed {
             layer: wanted.layer,
@@ -183,10 +186,9 @@ fn unreadable_finding(wanted: &Wanted<'_>, row: usize, column: &str, text: &str)
         layer: wanted.layer,
         row: row as u32,
     };
-    let said = Sentence::new().feature(feature).text(format!(
-        " has `{text}` in `{column}` ({}), which is no number",
-        wanted.key
-    ));
+    let said = Sentence::new()
+        .feature(feature)
+        .text(format!(" has `{text}` in `{column}` ({}), which cannot be", wanted.key));
     Finding::new(Code::ValueUnreadable, said).on(feature)
 }
 

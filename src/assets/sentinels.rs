@@ -89,6 +89,20 @@ pub(super) fn is_filler(meaning: Meaning, value: f64, others: Option<Spread>) ->
     }
 }
 
+/// Whether a value in SI can be what a column of this meaning holds. The bounds are far outside anything built; they keep a
+/// mistyped exponent out of the hydraulics. Diameters, C-factors and roughness have bounds and findings of their own.
+pub(super) fn is_possible(meaning: Meaning, si: f64) -> bool {
+    let possible = match meaning {
+        Meaning::Elevation | Meaning::Head => -1_000.0..=20_000.0,
+        Meaning::Demand | Meaning::NeededFlow => -1_000.0..=1_000.0,
+        Meaning::MinorLoss => -1e6..=1e6,
+        Meaning::Length => 0.0..=1e6,
+        Meaning::Lift => -1_000.0..=1_000.0,
+        Meaning::Diameter | Meaning::CFactor | Meaning::Roughness => f64::MIN..=f64::MAX,
+    };
+    possible.contains(&si)
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;

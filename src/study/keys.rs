@@ -131,7 +131,7 @@ impl<'a> StudyFile<'a> {
     pub fn parse(path: &'a Path, text: &str) -> Result<(StudyFile<'a>, toml::Table), Error> {
         let wrong = |error: toml::de::Error| {
             let place = error.span().map(|span| {
-                let before = &text[..span.start.min(text.len())];
+                let before = text.get(..span.start).unwrap_or(text);
                 let column = before.chars().rev().take_while(|letter| *letter != '\n').count() + 1;
                 format!("line {}, column {column}: ", line_at(text, span.start))
             });

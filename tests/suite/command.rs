@@ -98,3 +98,135 @@ fn a_study_that_cannot_be_done_is_one_sentence_on_stderr() {
     assert!(err.contains("mains.geojson: cannot read"), "{err}");
     assert!(!folder.path().join("gradeline-results").exists());
 }
+
+/// A study of the sample town and a folder for its results.
+fn sample() -> (String, tempfile::TempDir) {
+    let path = Path::new(env!("CARGO_MANIFEST_DIR")).join("sample-data/quenlow/study.toml");
+    (path.to_str().unwrap().to_string(), tempfile::tempdir().unwrap())
+}
+
+#[test]
+fn check_prints_a_summary_and_writes_layers() {
+    let (study, folder) = sample();
+    let out = folder.path().join("results");
+    let (code, text, err) = run(&["check", &study, "--out", out.to_str().unwrap()]);
+    assert_eq!((code, err.as_str()), (0, ""));
+    let first = text.lines().next().unwrap();
+    assert!(
+        first.starts_with("Quenlow, existing network: ") && first.contains("of mains was tested"),
+        "{first}"
+    );
+    for heading in [
+        "Read\n",
+        "Joined, with a tolerance of",
+        "Doubtful in the map:",
+        "Pressure and velocity",
+        "Fire flow:",
+        "Cautions\n",
+    ] {
+        assert!(text.contains(heading), "{heading}");
+    }
+    for layer in [
+        "mains",
+        "parts",
+        "nodes",
+        "hydrants",
+        "customers",
+        "joins",
+        "findings",
+        "node_cases",
+        "part_cases",
+    ] {
+        assert!(out.join(format!("{layer}.geojson")).is_file(), "{layer}");
+    }
+    assert!(out.join("summary.json").is_file());
+}
+
+#[test]
+fn the_same_run_gives_the_same_files() {
+    let (study, folder) = sample();
+    let [a, b] = ["a", "b"].map(|name| folder.path().join(name));
+    for out in [&a, &b] {
+        assert_eq!(
+            run(&["check", &study, "--quiet", "--out", out.to_str().unwrap()]),
+            (0, String::new(), String::new())
+        );
+    }
+    for file in std::fs::read_dir(&a).unwrap() {
+        let name = file.unwrap().file_name();
+        assert!(
+            std::fs::read(a.join(&name)).unwrap() == std::fs::read(b.join(&name)).unwrap(),
+            "{name:?}"
+        );
+    }
+}
+
+#[test]
+fn findings_at_or_above_a_severity_give_exit_code_one() {
+    let (study, folder) = sample();
+    let out = folder.path().join("results");
+    let out = out.to_str().unwrap();
+    for severity in ["note", "warning", "serious"] {
+        assert_eq!(
+            run(&["map", &study, "--quiet", "--fail-at", severity, "--out", out]),
+            (1, String::new(), String::new())
+        );
+    }
+}
+
+#[test]
+fn map_needs_no_hydraulics_and_json_is_the_summary() {
+    let (study, folder) = sample();
+    let out = folder.path().join("results");
+    let (code, text, err) = run(&[
+        "map",
+        &study,
+        "--json",
+        "--format",
+        "shapefile",
+        "--out",
+        out.to_str().unwrap(),
+    ]);
+    assert_eq!((code, err.as_str()), (0, ""));
+    let summary: serde_json::Value = serde_json::from_str(&text).unwrap();
+    assert_eq!(summary["schema"], 1);
+    let files: Vec<&str> = summary["files"]
+        .as_array()
+        .unwrap()
+        .iter()
+        .map(|file| file.as_str().unwrap())
+        .collect();
+    assert!(
+        files.contains(&"mains.shp") && files.contains(&"summary.json"),
+        "{files:?}"
+    );
+    assert!(files.iter().all(|file| out.join(file).is_file()));
+    assert!(!out.join("part_cases.dbf").exists());
+}
+
+#[test]
+fn results_lie_beside_the_study_unless_told_otherwise() {
+    let folder = tempfile::tempdir().unwrap();
+    let mains = r#"{"type":"FeatureCollection","features":[{"type":"Feature","properties":{},
+        "geometry":{"type":"LineString","coordinates":[[10,50],[10.001,50]]}}]}"#;
+    std::fs::write(folder.path().join("mains.geojson"), mains).unwrap();
+    let path = study(folder.path(), "[mains]\nfrom = \"mains.geojson\"\n");
+    let (code, text, err) = run(&["check", &path]);
+    assert_eq!((code, err.as_str()), (0, ""), "{text}");
+    assert!(folder.path().join("gradeline-results/mains.geojson").is_file());
+    assert!(text.contains("untested"), "{text}");
+}
+
+#[test]
+fn a_reader_that_goes_away_is_no_trouble() {
+    use std::process::{Command, Stdio};
+    let mut child = Command::new(assert_cmd::cargo::cargo_bin!("gradeline"))
+        .arg("explain")
+        .stdout(Stdio::piped())
+        .stderr(Stdio::piped())
+        .spawn()
+        .unwrap();
+    drop(child.stdout.take());
+    let ended = child.wait_with_output().unwrap();
+    assert_eq!((ended.status.code(), ended.stderr.as_slice()), (Some(0), &b""[..]));
+}

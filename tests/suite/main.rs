@@ -9,3 +9,4 @@ mod hydraulic;
 mod numbers;
 mod properties;
 mod sample_town;
+mod study_file;
