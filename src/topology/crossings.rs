@@ -149,8 +149,9 @@ fn say(work: &mut Work, crossing: Crossing) {
     }
     if innocent {
         finding = finding.severity(Severity::Note);
-    } else if let Some((end, _)) = tail {
-        work.missed.push(Missed { end, other });
+    } else {
+        let s = if b_first { crossing.r } else { crossing.s };
+        work.missed.push(Missed { line: one, s, other });
     }
     work.findings.push(finding);
     work.map.joins.push(Join {

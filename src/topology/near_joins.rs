@@ -26,6 +26,8 @@ const SHORT_WAY_AHEAD_M: f64 = 3.0;
 /// Ends that are not free are joined to the middle of a main only this near, m: true drafting gaps are no wider, parallel
 /// mains are.
 const CLOSE_M: f64 = 0.1;
+/// Two tees on a main nearer to each other than this share of the tolerance are one fitting.
+const ONE_FITTING: f64 = 0.5;
 /// How far back along a line to look whether it runs beside another, m.
 const BESIDE_M: f64 = 5.0;
 
@@ -120,7 +122,7 @@ fn gather(work: &Work, spot: u32, candidates: &mut Vec<Candidate>) {
             .web
             .stops(&work.lines, hit.line)
             .any(|(_, other)| work.web.same(other, spot));
-        if by_an_end || meets || hit.distance_m <= work.settings.touch_m {
+        if by_an_end || meets || hit.distance_m <= work.settings.touch_m || node_beside(work, spot, hit).is_some() {
             continue;
         }
         if let Some(end) = free {
@@ -144,6 +146,23 @@ fn gather(work: &Work, spot: u32, candidates: &mut Vec<Candidate>) {
             distance_m: tail_m,
         });
     }
+}
+
+/// A node of the line that was hit which the spot belongs to rather than to the bare line: one it is heading for, or one so
+/// near along the line that the two would be one fitting.
+fn node_beside(work: &Work, spot: u32, hit: Hit) -> Option<u32> {
+    let at = work.web.at[spot as usize];
+    let (tolerance_m, one_fitting_m) = (work.settings.tolerance_m, ONE_FITTING * work.settings.tolerance_m);
+    let nodes = work
+        .web
+        .stops(&work.lines, hit.line)
+        .filter(|&(_, node)| !work.web.same(node, spot));
+    nodes
+        .filter(|&(_, node)| distance_m(work.web.at[node as usize], at) <= tolerance_m)
+        .filter(|&(r, node)| (r - hit.s).abs() <= one_fitting_m || heads_for(work, spot, node))
+        .map(|(r, node)| ((r - hit.s).abs(), node))
+        .min_by(|a, b| a.0.total_cmp(&b.0))
+        .map(|(_, node)| node)
 }
 
 fn middle(work: &Work, spot: u32, end: Option<End>, hit: Hit) -> Candidate {
@@ -289,13 +308,18 @@ fn ends_beside(work: &Work, spot: u32, other: u32) -> bool {
 
 /// Whether a line, a few metres before its end, is still within the tolerance of another.
 pub(super) fn runs_beside(work: &Work, end: End, line: u32) -> bool {
-    let (tolerance_m, length_m) = (work.settings.tolerance_m, work.lines.length_m(end.line()));
-    if length_m < 2.0 * tolerance_m {
+    runs_beside_within(work, end, line, work.settings.tolerance_m)
+}
+
+/// Whether a line, a few metres before its end, is still within `within_m` of another.
+pub(super) fn runs_beside_within(work: &Work, end: End, line: u32, within_m: f64) -> bool {
+    let length_m = work.lines.length_m(end.line());
+    if length_m < 2.0 * within_m {
         return false;
     }
-    let back = BESIDE_M.max(2.0 * tolerance_m).min(length_m);
+    let back = BESIDE_M.max(2.0 * within_m).min(length_m);
     let place = work.lines.place(end.line(), (work.lines.end_s(end) - back).abs());
-    work.lines.nearest(line, place).distance_m <= tolerance_m
+    work.lines.nearest(line, place).distance_m <= within_m
 }
 
 /// Whether the free end at a spot runs past a node: the node lies beside its tail, not beyond its end.
@@ -382,7 +406,7 @@ fn join_crossed(work: &mut Work, spot: u32, end: End, s: f64, hit: Hit) -> bool 
         .filter(|(r, _)| (r - hit.s).abs() <= tail_m);
     let near = near.min_by(|(r, _), (q, _)| (r - hit.s).abs().total_cmp(&(q - hit.s).abs()));
     if let Some((r, node)) = near
-        && (r - hit.s).abs() <= CLOSE_M
+        && (r - hit.s).abs() <= CLOSE_M.max(ONE_FITTING * work.settings.tolerance_m)
     {
         return join_at(work, end, s, node, tail_m);
     }

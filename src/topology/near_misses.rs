@@ -9,7 +9,7 @@ use std::collections::HashSet;
 use super::cleaning::Work;
 use super::geometry::{distance_m, dot, from_to};
 use super::lines::{End, Hit};
-use super::near_joins::{heads_for_place, runs_beside};
+use super::near_joins::{heads_for_place, runs_beside_within};
 use super::overshoots::{explained_within_m, free_end, tail_crossing};
 use super::web::{Place, Zone};
 use super::{Join, JoinKind};
@@ -22,10 +22,11 @@ const NEIGHBOUR_M: f64 = 30.0;
 /// A main no longer than this that ends free is a lateral, or a stub left for later, m.
 const STUB_M: f64 = 8.0;
 
-/// A free end that a warning was given for, and the line it may belong to: what may explain an island.
+/// A place on one line and another line that a warning says it may belong to: what may explain an island.
 #[derive(Clone, Copy, Debug)]
 pub(super) struct Missed {
-    pub end: End,
+    pub line: u32,
+    pub s: f64,
     pub other: u32,
 }
 
@@ -131,7 +132,12 @@ fn against(work: &Work, end: End, hit: Hit, node: Option<u32>, at: Point, to: Po
     } else if work.marks.explains_end(at, to, within_m, true) {
         words.push("a node point stands at the end");
     }
-    if runs_beside(work, end, hit.line) {
+    let others = node.map_or(vec![hit.line], |node| work.web.lines_at(node));
+    let within_m = work.settings.tolerance_m.max(1.3 * distance_m(at, to));
+    if others
+        .iter()
+        .any(|&other| runs_beside_within(work, end, other, within_m))
+    {
         words.push("it runs beside the other");
     }
     let (own_zone, other_zone) = (work.zone_of_line(end.line()), work.zone_of_line(hit.line));
@@ -184,7 +190,8 @@ fn say(work: &mut Work, miss: Miss) {
     finding.others = others.iter().map(|&other| work.feature(other)).collect();
     if miss.against.is_empty() {
         work.missed.push(Missed {
-            end: miss.end,
+            line: miss.end.line(),
+            s: work.lines.end_s(miss.end),
             other: miss.other,
         });
     } else {

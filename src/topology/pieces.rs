@@ -6,7 +6,7 @@ use petgraph::unionfind::UnionFind;
 
 use super::ValvePlace;
 use super::cleaning::Work;
-use super::lines::End;
+use super::near_misses::Missed;
 use super::node_points::feeds;
 use crate::assets::MainKind;
 use crate::finding::{Code, FeatureRef, Finding, Sentence, Severity};
@@ -207,17 +207,19 @@ fn said_already(work: &Work, piece: u32, mains: &[u32]) -> Option<&'static str> 
         return Some("; it carries raw water, which is not calculated");
     }
     let missed = work.missed.iter().any(|missed| {
-        let end: End = missed.end;
-        let at = work.lines.end_at(end);
-        if work.cuts.stops[end.line() as usize].is_empty() || work.cuts.stops[missed.other as usize].is_empty() {
+        let Missed { line, s, other } = *missed;
+        if work.cuts.stops[line as usize].is_empty() || work.cuts.stops[other as usize].is_empty() {
             return false;
         }
-        let own = work.piece_at(end.line(), work.lines.end_s(end));
-        let other = work.piece_at(missed.other, work.lines.nearest(missed.other, at).s);
+        let at = work.lines.place(line, s);
+        let (own, other) = (
+            work.piece_at(line, s),
+            work.piece_at(other, work.lines.nearest(other, at).s),
+        );
         own != other && (own == piece || other == piece)
     });
     if missed {
-        return Some("; a near miss of one of them was found, see there");
+        return Some("; a near miss or a bare crossing of one of them was found, see there");
     }
     let apart = mains.iter().any(|main| work.apart.contains(main));
     apart.then_some("; one of them is drawn in parts that do not touch, see there")

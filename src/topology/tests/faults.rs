@@ -321,7 +321,7 @@ fn an_end_on_the_line_between_is_joined_to_it_and_not_to_the_lateral_beside() {
     let mut board = Board::new(1.0);
     let through = board.main(&[[0.0, 0.0], [100.0, 0.0]]);
     let lateral = board.main(&[[40.0, 0.0], [40.0, 3.0]]);
-    let tee = board.main(&[[40.5, -0.3], [40.5, -50.0]]);
+    let tee = board.main(&[[40.7, -0.3], [40.7, -50.0]]);
     let seen = board.infer();
     assert!(seen.joined(tee, through) && seen.joined(lateral, through));
     assert!(!seen.joined(tee, lateral), "{:?}", seen.map().joins);

@@ -4,4 +4,4 @@ mod draw;
 mod faults;
 mod points;
 mod properties;
-// mod town;
+mod town;

@@ -87,7 +87,8 @@ pub fn build(seed: u64, size: usize, faults: usize, turn: f64) -> Town {
     for i in 0..size {
         for j in 0..size {
             for (u, v) in [(i + 1, j), (i, j + 1)] {
-                if u >= size || v >= size || chance.share() < 0.08 {
+                let outermost = i == 0 && u == 0;
+                if u >= size || v >= size || (!outermost && chance.share() < 0.08) {
                     continue;
                 }
                 let (a, b) = (corner(i, j), corner(u, v));
@@ -102,10 +103,19 @@ pub fn build(seed: u64, size: usize, faults: usize, turn: f64) -> Town {
             }
         }
     }
+    let column: Vec<Vec<Point>> = mains
+        .iter()
+        .filter(|m| m.nodes[1] == m.nodes[0] + 1 && m.nodes[1] < size)
+        .map(|m| m.vertices.clone())
+        .collect();
     join_through(&mut mains, &mut chance);
     let streets = mains.len();
     // Side branches off the middle of a street that is not split for them: laterals, stubs, cul-de-sacs, cross fittings.
     for street in 0..streets {
+        // Nothing ends in the narrow strip between the outermost street and the main beside it.
+        if mains[street].nodes.iter().filter(|&&node| node < size).count() > 1 {
+            continue;
+        }
         let branches = chance.below(3);
         for branch in 0..branches {
             let segment = chance.below(mains[street].vertices.len() - 1);
@@ -126,8 +136,17 @@ pub fn build(seed: u64, size: usize, faults: usize, turn: f64) -> Town {
                 2 => chance.within(0.5, 1.5),
                 _ => chance.within(15.0, 28.0),
             };
+            let tip = offset(start, nx * reach, ny * reach);
+            let clear = mains
+                .iter()
+                .enumerate()
+                .all(|(other, main)| other == street || is_clear(main, start, tip));
+            if !clear || !is_clear_of(&mains[street], toward(start, tip, 1.0), tip, 0.9) {
+                mains[street].nodes.pop();
+                continue;
+            }
             let end = places.len();
-            places.push(offset(start, nx * reach, ny * reach));
+            places.push(tip);
             let mut lateral = main(vec![start, places[end]], vec![node, end]);
             lateral.faultless = reach < 3.0;
             lateral.diameter_m = 0.1;
@@ -138,18 +157,39 @@ pub fn build(seed: u64, size: usize, faults: usize, turn: f64) -> Town {
         }
     }
     valve_clusters(&mut mains, &mut places, streets, &mut chance);
-    twins(&mut mains, &mut places, size, &mut chance);
-    plant(mains, places, hydrants, streets, faults, turn, &mut chance)
+    twins(&mut mains, &mut places, &column);
+    plant(mains, places, hydrants, streets, (faults, turn), size, &mut chance)
+}
+
+/// Whether a branch keeps 3.5 m away from another main.
+fn is_clear(main: &Drawn, from: Point, to: Point) -> bool {
+    is_clear_of(main, from, to, 3.5)
+}
+
+fn is_clear_of(main: &Drawn, from: Point, to: Point, m: f64) -> bool {
+    (0..=20).all(|step| {
+        let t = f64::from(step) / 20.0;
+        let p = [from[0] + (to[0] - from[0]) * t, from[1] + (to[1] - from[1]) * t];
+        main.vertices.windows(2).all(|pair| {
+            let (a, b) = (pair[0], pair[1]);
+            let (ux, uy) = (b[0] - a[0], b[1] - a[1]);
+            let share = (((p[0] - a[0]) * ux + (p[1] - a[1]) * uy) / (ux * ux + uy * uy)).clamp(0.0, 1.0);
+            (a[0] + ux * share - p[0]).hypot(a[1] + uy * share - p[1]) > m
+        })
+    })
 }
 
 /// Makes one main of two streets that go straight on, here and there: the main at the corner is then not split.
+/// Not two at one corner: two unsplit mains that cross are a bare crossing.
 fn join_through(mains: &mut Vec<Drawn>, chance: &mut Chance) {
+    let mut passed: BTreeSet<usize> = BTreeSet::new();
     let mut i = 0;
     while i < mains.len() {
         let last = *mains[i].nodes.last().unwrap();
         let next = (i + 1..mains.len()).find(|&j| mains[j].nodes[0] == last && mains[j].nodes.len() == 2);
         if let Some(j) = next
             && chance.share() < 0.15
+            && passed.insert(last)
         {
             let other = mains.remove(j);
             let of = &mut mains[i];
@@ -183,28 +223,28 @@ fn valve_clusters(mains: &mut Vec<Drawn>, places: &mut Vec<Point>, streets: usiz
     }
 }
 
-/// Lays a long main beside the outermost street, 1.2 m from it, connected at neither.
-fn twins(mains: &mut Vec<Drawn>, places: &mut Vec<Point>, size: usize, chance: &mut Chance) {
-    let mut last: Option<usize> = None;
-    for j in 0..size {
-        let at = offset(places[j], -1.2, chance.within(-0.1, 0.1));
+/// Lays a long main beside the outermost street, 1.2 m from it, connected nowhere on the way.
+fn twins(mains: &mut Vec<Drawn>, places: &mut Vec<Point>, column: &[Vec<Point>]) {
+    let size = column.len() + 1;
+    let beside = |p: Point| offset(p, -1.2, 0.0);
+    let first = places.len();
+    places.push(beside(column[0][0]));
+    for street in column {
+        let vertices: Vec<Point> = street.iter().map(|&p| beside(p)).collect();
         let node = places.len();
-        places.push(at);
-        if let Some(last) = last {
-            mains.push(Drawn {
-                vertices: vec![places[last], at],
-                nodes: vec![last, node],
-                faultless: true,
-                diameter_m: 0.4,
-            });
-        }
-        last = Some(node);
+        places.push(vertices[vertices.len() - 1]);
+        mains.push(Drawn {
+            vertices,
+            nodes: vec![node - 1, node],
+            faultless: true,
+            diameter_m: 0.4,
+        });
     }
     // It hangs together with the rest far outside.
     let far = offset(places[0], -60.0, -60.0);
     let node = places.len();
     places.push(far);
-    let first = mains[mains.len() - (size - 1)].nodes[0];
+    debug_assert_eq!(mains[mains.len() - (size - 1)].nodes[0], first);
     for (start, other) in [(places[first], first), (places[0], 0)] {
         let middle = if other == 0 {
             offset(far, 60.0, 0.0)
@@ -225,8 +265,8 @@ fn plant(
     places: Vec<Point>,
     hydrants: Vec<Point>,
     streets: usize,
-    faults: usize,
-    turn: f64,
+    (faults, turn): (usize, f64),
+    size: usize,
     chance: &mut Chance,
 ) -> Town {
     let mut board = Board::new(1.0);
@@ -245,12 +285,23 @@ fn plant(
         tries += 1;
         let i = chance.below(streets.min(mains.len()));
         let node = mains[i].nodes[0];
-        if mains[i].faultless || degree[&node] < 2 || touched.contains(&node) || !touched.insert(1_000_000 + i) {
+        // Beside the twin of the outermost street an end could as well belong to that.
+        if node < size
+            || mains[i].faultless
+            || degree[&node] < 2
+            || touched.contains(&node)
+            || !touched.insert(1_000_000 + i)
+        {
             continue;
         }
         touched.insert(node);
         let (start, next) = (mains[i].vertices[0], mains[i].vertices[1]);
         let kind = planted.len() % 7;
+        // An end moved at random beside a valve cluster could as well belong to a piece of it.
+        let cluster = mains.iter().any(|main| main.faultless && main.nodes.contains(&node));
+        if kind == 4 && cluster {
+            continue;
+        }
         match kind {
             0 => {
                 mains[i].vertices[0] = toward(start, next, chance.within(0.05, 0.9));
@@ -277,8 +328,20 @@ fn plant(
                 planted.push((vec![Code::DuplicateMain], i as u32));
             }
             4 => {
-                let (dx, dy) = (chance.within(-0.6, 0.6), chance.within(-0.6, 0.6));
-                mains[i].vertices[0] = offset(start, dx, dy);
+                // Beside a main that is not split here, a farther place could be a tee of its own.
+                let unsplit = mains.iter().any(|m| m.nodes.len() > 2 && m.nodes[1..].contains(&node));
+                let far = if unsplit { 0.35 } else { 0.6 };
+                let (dx, dy) = (chance.within(-far, far), chance.within(-far, far));
+                let moved = offset(start, dx, dy);
+                // An end that touches a main by chance has a better reason to be joined to it.
+                if !mains
+                    .iter()
+                    .enumerate()
+                    .all(|(k, m)| k == i || is_clear_of(m, moved, moved, 0.005))
+                {
+                    continue;
+                }
+                mains[i].vertices[0] = moved;
                 planted.push((
                     vec![Code::EndJoined, Code::EndJoinedToMiddle, Code::Overshoot],
                     i as u32,
@@ -292,6 +355,13 @@ fn plant(
                 let mut bare = mains[i].clone();
                 bare.vertices = vec![toward(middle, a, 4.0), toward(middle, b, 4.0)];
                 bare.nodes.clear();
+                let others = mains.iter().chain(&extra).enumerate().filter(|(other, _)| *other != i);
+                if !others
+                    .into_iter()
+                    .all(|(_, main)| is_clear(main, bare.vertices[0], bare.vertices[1]))
+                {
+                    continue;
+                }
                 extra.push(bare);
                 planted.push((vec![Code::CrossingNotJoined], i as u32));
             }
@@ -300,6 +370,12 @@ fn plant(
                 let p = places[node];
                 let out = chance.within(0.0, std::f64::consts::TAU);
                 let at = |a: f64, r: f64| offset(p, (out + a).cos() * r, (out + a).sin() * r);
+                let mut all = mains.iter().chain(&extra);
+                if !all.all(|main| {
+                    (0..4).all(|k| is_clear_of(main, at(0.1 * k as f64, 3.0), at(0.1 * k as f64, 7.0), 1.0))
+                }) {
+                    continue;
+                }
                 ring.vertices = vec![p, at(0.1, 6.0), at(0.3, 6.5), at(0.35, 4.0), p];
                 ring.nodes = vec![node];
                 extra.push(ring);
@@ -356,7 +432,30 @@ fn judge(seed: u64, size: usize, faults: usize, turn: f64) -> (usize, usize) {
             Drawing::Lines(parts) => parts[0].clone(),
             _ => Vec::new(),
         };
-        format!("{pair:?} {:?} {:?} planted {:?}", at(pair.0), at(pair.1), town.planted)
+        let about = |m: u32| {
+            let feature = crate::finding::FeatureRef { layer: MAINS, row: m };
+            let named = seen
+                .findings()
+                .iter()
+                .filter(|f| f.feature == Some(feature) || f.others.contains(&feature));
+            named
+                .map(|f| (f.code, f.feature.map(|f| f.row), f.at))
+                .collect::<Vec<_>>()
+        };
+        let (a, b) = (pair.0, pair.1);
+        let joins = seen
+            .map()
+            .joins
+            .iter()
+            .filter(|j| [j.main_a, j.main_b].iter().any(|m| [a, b].contains(m)));
+        let joins: Vec<_> = joins.map(|j| (j.kind, j.main_a, j.main_b, j.at, j.joined)).collect();
+        format!(
+            "{pair:?} {:?} {:?} {:?} {:?} {joins:?}",
+            at(a),
+            at(b),
+            about(a),
+            about(b)
+        )
     };
     if let Some(wrong) = found.difference(&truth).next() {
         panic!("seed {seed}: joined wrongly: {}", describe(&wrong));
