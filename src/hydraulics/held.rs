@@ -15,6 +15,9 @@ use crate::network::{Condition, NodeIx};
 /// hydrant could give would lower it by a measurable amount, and the rounding of its gap would decide instead.
 const OUT_OF_REACH: f64 = 1e-10;
 
+/// Last change of the flow, relative to it, at which it is at rest: the next would be about its square.
+const AT_REST: f64 = 1e-8;
+
 /// A place whose head must not fall below a limit while a hydrant is open.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Kept {
@@ -75,7 +78,7 @@ impl Solver {
         let mut newton = self.newton(&self.equations.edges, condition, &condition.source_head_m);
         self.start_from(&mut newton, base);
         let settled = newton.settle(&self.settings, Some(&mut aim));
-        if settled.is_ok() && aim.is_met(&newton) {
+        if settled.is_ok() && aim.is_met(newton.drawn) {
             let flow = newton.drawn;
             let state = self.answer(&newton, settled, drawing(condition, own.node, flow))?;
             return Ok(Held {
@@ -269,14 +272,13 @@ impl Aim for Limits<'_> {
         self.last_change = least.max(-newton.drawn);
         self.last_change
     }
+
+    fn is_met(&self, drawn_m3_per_s: f64) -> bool {
+        self.last_change.abs() <= AT_REST * drawn_m3_per_s.abs() + 1e-12
+    }
 }
 
 impl Limits<'_> {
-    /// Whether the flow has come to rest.
-    fn is_met(&self, newton: &Newton) -> bool {
-        self.last_change.abs() <= 1e-6 * newton.drawn.abs() + 1e-12
-    }
-
     fn limit(&self, solver: &Solver) -> Limit {
         match self.binding {
             Binding::Node(node) => Limit::Head(solver.equations.node[node]),

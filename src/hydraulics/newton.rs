@@ -29,6 +29,9 @@ pub(super) trait Aim {
 
     /// The change of the drawn flow, given the step without it (`to_rest`) and the fall of head per flow drawn (`fall`).
     fn change(&mut self, newton: &Newton, to_rest: &[f64], fall: &[f64]) -> f64;
+
+    /// Whether the drawn flow has come to rest.
+    fn is_met(&self, drawn_m3_per_s: f64) -> bool;
 }
 
 /// The numbers of one solve.
@@ -170,7 +173,9 @@ impl<'a> Newton<'a> {
                 let done = self.worst_relative <= POLISHED_HEAD
                     && self.worst_continuity <= POLISHED_CONTINUITY * self.largest_flow;
                 let falls = self.worst_relative < 0.5 * before.0 || self.worst_continuity < 0.5 * before.1;
-                if done || !falls || polished == POLISHING_STEPS {
+                // One hydrant of many wants its flow, not the last digit of every head.
+                let enough = aim.as_deref().is_some_and(|aim| aim.is_met(self.drawn));
+                if done || enough || !falls || polished == POLISHING_STEPS {
                     return Ok(steps);
                 }
                 polished += 1;
