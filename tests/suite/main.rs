@@ -1,5 +1,6 @@
 //! The one test binary. Each module is one kind of test.
 
+mod calculation;
 mod cases;
 mod columns;
 mod command;
