@@ -208,14 +208,37 @@ pub(super) fn unit_in_name(name: &str, quantity: Quantity) -> Option<Unit> {
         before_is_lower = letter.is_lowercase();
     }
     let mut words = words.into_iter().filter(|word| !word.is_empty());
-    words.next()?;
-    let last = words.next_back()?.to_lowercase();
-    match last.as_str() {
-        "inch" | "inches" => Unit::parse("in", quantity),
-        "feet" | "foot" => Unit::parse("ft", quantity),
-        "metres" | "meters" | "metre" | "meter" => Unit::parse("m", quantity),
-        word => Unit::parse(word, quantity),
-    }
+    let first = words.next()?;
+    let Some(last) = words.next_back() else {
+        return unit_run_on(&first, quantity);
+    };
+    let last = last.to_lowercase();
+    let usual = match last.as_str() {
+        "inch" | "inches" => "in",
+        "feet" | "foot" => "ft",
+        "metres" | "meters" | "metre" | "meter" => "m",
+        "ls" | "lsec" => "lps",
+        "lmin" => "lpm",
+        "cms" => "m3s",
+        "cmh" => "m3h",
+        "cmd" => "m3d",
+        "usgpm" => "gpm",
+        word => word,
+    };
+    Unit::parse(usual, quantity)
+}
+
+/// Units that a name may end in without a mark before them (`ELEVFT`, `DEMGPM`): those that no other word is likely to end in.
+const RUN_ON: &[&str] = &["mm", "ft", "gpm", "gpd", "mgd", "lps", "mld", "cfs"];
+
+/// The unit that a name of one word ends in.
+fn unit_run_on(name: &str, quantity: Quantity) -> Option<Unit> {
+    let lower = name.to_lowercase();
+    let fits = |suffix: &&&str| lower.len() > suffix.len() && lower.ends_with(**suffix);
+    RUN_ON
+        .iter()
+        .filter(fits)
+        .find_map(|suffix| Unit::parse(suffix, quantity))
 }
 
 /// Nominal sizes of mains in mm: those of iron, steel and asbestos cement (EN 545, EN 512), and the outside diameters that
@@ -360,6 +383,10 @@ mod tests {
         assert_eq!(named("Elev (ft)", Quantity::Length), Some("ft"));
         assert_eq!(named("needFlowGpm", Quantity::Flow), Some("gpm"));
         assert_eq!(named("dem_lps", Quantity::Flow), Some("l/s"));
+        assert_eq!(named("DEM_CMH", Quantity::Flow), Some("m3/h"));
+        assert_eq!(named("ELEVFT", Quantity::Length), Some("ft"));
+        assert_eq!(named("DIAMMM", Quantity::Diameter), Some("mm"));
+        assert_eq!(named("MAIN", Quantity::Diameter), None);
         assert_eq!(named("diameter", Quantity::Diameter), None);
         assert_eq!(named("m", Quantity::Length), None);
     }

@@ -288,21 +288,22 @@ impl Desk<'_> {
                 .contains(&value)
                 .then_some(Friction::RoughnessM(value)),
         };
-        let mut impossible = Vec::new();
+        let (mut impossible, mut fillers) = (Vec::new(), Vec::new());
         let own = slots.iter().enumerate().map(|(row, slot)| {
             let feature = FeatureRef { layer, row: row as u32 };
             let own = slot.value().and_then(possible);
-            let said = match slot {
-                Slot::Value(value) if own.is_none() => Some(value.to_string()),
+            match slot {
+                Slot::Value(value) if own.is_none() && taking_part[row] => {
+                    let message = Sentence::new()
+                        .feature(feature)
+                        .text(format!(" has {value} in `{name}`"));
+                    impossible.push(Finding::new(Code::FrictionValueImpossible, message).on(feature));
+                }
                 // A filler in the shape of a number looks like a value to whoever reads the map.
-                Slot::Empty(text) if text.parse::<f64>().is_ok() => Some(text.clone()),
-                _ => None,
-            };
-            if let Some(said) = said.filter(|_| taking_part[row]) {
-                let message = Sentence::new()
-                    .feature(feature)
-                    .text(format!(" has {said} in `{name}`"));
-                impossible.push(Finding::new(Code::FrictionValueImpossible, message).on(feature));
+                Slot::Empty(text) if text.parse::<f64>().is_ok() && taking_part[row] => {
+                    fillers.push((text.clone(), feature));
+                }
+                _ => {}
             }
             own
         });
@@ -310,6 +311,13 @@ impl Desk<'_> {
         self.report(impossible, |count| {
             format!("{count} mains have an impossible value in `{name}`").into()
         });
+        for (filler, features) in by_word(fillers) {
+            let said = format!(
+                "`{name}` of {} is {filler}, a filler",
+                Role::Main.counted(features.len())
+            );
+            self.report_together(Code::FrictionValueImpossible, Severity::Warning, &features, said.into());
+        }
         Ok(own)
     }
 
