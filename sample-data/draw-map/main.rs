@@ -39,19 +39,28 @@ fn main() -> Result<(), Box<dyn Error>> {
 }
 
 fn read(path: &Path) -> Result<Vec<Value>, Box<dyn Error>> {
-    let all: Value = serde_json::from_str(&std::fs::read_to_string(path).map_err(|cause| format!("{}: {cause}", path.display()))?)?;
+    let all: Value =
+        serde_json::from_str(&std::fs::read_to_string(path).map_err(|cause| format!("{}: {cause}", path.display()))?)?;
     Ok(all["features"].as_array().cloned().unwrap_or_default())
 }
 
 /// A feature's lines or points as lists of longitude and latitude.
 fn lines(feature: &Value) -> Vec<Vec<[f64; 2]>> {
     let pair = |value: &Value| Some([value.get(0)?.as_f64()?, value.get(1)?.as_f64()?]);
-    let line = |value: &Value| value.as_array().map(|all| all.iter().filter_map(pair).collect()).unwrap_or_default();
+    let line = |value: &Value| {
+        value
+            .as_array()
+            .map(|all| all.iter().filter_map(pair).collect())
+            .unwrap_or_default()
+    };
     let coordinates = &feature["geometry"]["coordinates"];
     match feature["geometry"]["type"].as_str() {
         Some("Point") => pair(coordinates).map(|at| vec![vec![at]]).unwrap_or_default(),
         Some("LineString") => vec![line(coordinates)],
-        Some("MultiLineString") => coordinates.as_array().map(|all| all.iter().map(line).collect()).unwrap_or_default(),
+        Some("MultiLineString") => coordinates
+            .as_array()
+            .map(|all| all.iter().map(line).collect())
+            .unwrap_or_default(),
         _ => Vec::new(),
     }
 }
@@ -88,7 +97,10 @@ impl Sheet {
     }
 
     fn at(&self, [x, y]: [f64; 2]) -> (f64, f64) {
-        (MARGIN + (x - self.west) * self.per_degree[0], MARGIN + (self.north - y) * self.per_degree[1])
+        (
+            MARGIN + (x - self.west) * self.per_degree[0],
+            MARGIN + (self.north - y) * self.per_degree[1],
+        )
     }
 
     fn open(&self, out: &mut String) -> std::fmt::Result {
@@ -120,7 +132,10 @@ fn draw_mains(out: &mut String, sheet: &Sheet, mains: &[Value]) -> std::fmt::Res
         let width = (0.6 + bore_mm / 90.0).min(6.0);
         for line in lines(main).iter().filter(|line| line.len() > 1) {
             let path = path(sheet, line);
-            writeln!(out, "<path d=\"{path}\" fill=\"none\" stroke=\"{colour}\" stroke-width=\"{width:.1}\"{dash}/>")?;
+            writeln!(
+                out,
+                "<path d=\"{path}\" fill=\"none\" stroke=\"{colour}\" stroke-width=\"{width:.1}\"{dash}/>"
+            )?;
         }
     }
     Ok(())
@@ -140,20 +155,34 @@ fn draw_nodes(out: &mut String, sheet: &Sheet, nodes: &[Value]) -> std::fmt::Res
             writeln!(out, "<circle cx=\"{x:.1}\" cy=\"{y:.1}\" r=\"4\" fill=\"{colour}\"/>")?;
         }
     }
-    for node in nodes.iter().filter(|node| matches!(node["properties"]["kind"].as_str(), Some("source" | "tank"))) {
+    for node in nodes
+        .iter()
+        .filter(|node| matches!(node["properties"]["kind"].as_str(), Some("source" | "tank")))
+    {
         for point in lines(node).into_iter().flatten() {
             let (x, y) = sheet.at(point);
-            writeln!(out, "<rect x=\"{:.1}\" y=\"{:.1}\" width=\"16\" height=\"16\" fill=\"#1b4965\"/>", x - 8.0, y - 8.0)?;
+            writeln!(
+                out,
+                "<rect x=\"{:.1}\" y=\"{:.1}\" width=\"16\" height=\"16\" fill=\"#1b4965\"/>",
+                x - 8.0,
+                y - 8.0
+            )?;
         }
     }
     Ok(())
 }
 
 fn draw_hydrants(out: &mut String, sheet: &Sheet, hydrants: &[Value]) -> std::fmt::Result {
-    for hydrant in hydrants.iter().filter(|hydrant| hydrant["properties"]["fire_flag"].as_str() == Some("short")) {
+    for hydrant in hydrants
+        .iter()
+        .filter(|hydrant| hydrant["properties"]["fire_flag"].as_str() == Some("short"))
+    {
         for point in lines(hydrant).into_iter().flatten() {
             let (x, y) = sheet.at(point);
-            writeln!(out, "<circle cx=\"{x:.1}\" cy=\"{y:.1}\" r=\"7\" fill=\"none\" stroke=\"#b2182b\" stroke-width=\"2.2\"/>")?;
+            writeln!(
+                out,
+                "<circle cx=\"{x:.1}\" cy=\"{y:.1}\" r=\"7\" fill=\"none\" stroke=\"#b2182b\" stroke-width=\"2.2\"/>"
+            )?;
         }
     }
     Ok(())
@@ -181,18 +210,39 @@ fn legend(out: &mut String, sheet: &Sheet) -> std::fmt::Result {
     let x = WIDTH - LEGEND;
     let mut y = MARGIN + 10.0;
     let mut row = |mark: &str, words: &str| {
-        let line = writeln!(out, "<g transform=\"translate({x:.0} {y:.0})\">{mark}<text x=\"20\" y=\"5\">{words}</text></g>");
+        let line = writeln!(
+            out,
+            "<g transform=\"translate({x:.0} {y:.0})\">{mark}<text x=\"20\" y=\"5\">{words}</text></g>"
+        );
         y += 26.0;
         line
     };
     row(&format!("<circle r=\"5\" fill=\"{LOW}\"/>"), "pressure below its limit")?;
     row(&format!("<circle r=\"5\" fill=\"{NEAR}\"/>"), "less than 7 m above it")?;
     row(&format!("<circle r=\"5\" fill=\"{FINE}\"/>"), "pressure in order")?;
-    row("<circle r=\"7\" fill=\"none\" stroke=\"#b2182b\" stroke-width=\"2.2\"/>", "hydrant short of fire flow")?;
-    row("<path d=\"M-6 5L0 -7L6 5Z\" fill=\"#ffd23f\" stroke=\"#3a3a3a\"/>", "fault of the map")?;
-    row("<rect x=\"-8\" y=\"-8\" width=\"16\" height=\"16\" fill=\"#1b4965\"/>", "source or tank")?;
-    row("<path d=\"M-8 0H8\" stroke=\"#5b6770\" stroke-width=\"3\"/>", "main, wider where larger")?;
-    row("<path d=\"M-8 0H8\" stroke=\"#b9b4aa\" stroke-width=\"2\" stroke-dasharray=\"4 3\"/>", "not calculated")?;
+    row(
+        "<circle r=\"7\" fill=\"none\" stroke=\"#b2182b\" stroke-width=\"2.2\"/>",
+        "hydrant short of fire flow",
+    )?;
+    row(
+        "<path d=\"M-6 5L0 -7L6 5Z\" fill=\"#ffd23f\" stroke=\"#3a3a3a\"/>",
+        "fault of the map",
+    )?;
+    row(
+        "<rect x=\"-8\" y=\"-8\" width=\"16\" height=\"16\" fill=\"#1b4965\"/>",
+        "source or tank",
+    )?;
+    row(
+        "<path d=\"M-8 0H8\" stroke=\"#5b6770\" stroke-width=\"3\"/>",
+        "main, wider where larger",
+    )?;
+    row(
+        "<path d=\"M-8 0H8\" stroke=\"#b9b4aa\" stroke-width=\"2\" stroke-dasharray=\"4 3\"/>",
+        "not calculated",
+    )?;
     let bar = 500.0 * sheet.px_per_m;
-    row(&format!("<path d=\"M-8 14h{bar:.1}m0 -5v10m-{bar:.1} 0v-10\" stroke=\"#3a3a3a\"/>"), "500 m")
+    row(
+        &format!("<path d=\"M-8 14h{bar:.1}m0 -5v10m-{bar:.1} 0v-10\" stroke=\"#3a3a3a\"/>"),
+        "500 m",
+    )
 }

@@ -18,6 +18,14 @@ pub fn plant_all(town: &mut Town, lcg: &mut Lcg) {
     islands(town);
     attributes(town, lcg);
     broken_geometry(town);
+    drop_stray_valves(town);
+}
+
+/// Valves whose main was moved from under them by a fault are not drawn: they would be faults that nobody planted.
+fn drop_stray_valves(town: &mut Town) {
+    let lines: Vec<Vec<Point>> = town.mains.iter().flat_map(|main| main.lines().to_vec()).collect();
+    let stands = |valve: &super::town::Valve| lines.iter().any(|line| nearest_on(line, valve.at).distance < 0.5);
+    town.valves.retain(stands);
 }
 
 /// A main that fits and that has no fault on or next to it.
@@ -272,6 +280,7 @@ fn self_loops(town: &mut Town, lcg: &mut Lcg) {
         let mut main = town.mains[close].clone();
         main.set_line(ring);
         main.ends = [main.ends[1], main.ends[1]];
+        main.stored_length_m = None;
         town.mains[close].planted = true;
         let index = town.add_main(main);
         town.plant(

@@ -323,7 +323,7 @@ pub fn run_through(town: &mut Town, wanted: usize) {
 pub fn merge(town: &mut Town, first: usize, second: usize, node: usize) {
     let more = town.mains[second].line().expect("drawn").clone();
     let tees = town.mains[second].tees.clone();
-    let end = town.mains[second].ends[1];
+    let (end, its_length) = (town.mains[second].ends[1], town.mains[second].stored_length_m);
     let main = &mut town.mains[first];
     let mut line = main.line().expect("drawn").clone();
     line.pop();
@@ -332,6 +332,7 @@ pub fn merge(town: &mut Town, first: usize, second: usize, node: usize) {
     main.ends[1] = end;
     main.tees.push(node);
     main.tees.extend(tees);
+    main.stored_length_m = main.stored_length_m.zip(its_length).map(|(one, other)| one + other);
     town.mains.remove(second);
 }
 

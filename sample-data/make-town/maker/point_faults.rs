@@ -2,7 +2,7 @@
 
 use super::faults::{on, pick, plain, rests_on_loop};
 use super::lcg::Lcg;
-use super::plane::{Point, add, left, length, place_along, scale};
+use super::plane::{Point, add, distance, left, length, place_along, scale};
 use super::town::{
     Customer, FIRST_CUSTOMER_ID, FIRST_HYDRANT_ID, FIRST_NODE_ID, FIRST_VALVE_ID, Hydrant, Node, Town, Valve,
 };
@@ -221,16 +221,36 @@ fn node_points(town: &mut Town) {
     let corners: Vec<usize> = (0..town.nodes.len())
         .filter(|node| fits(&town.nodes[*node]) && town.mains_at(*node).len() >= 3)
         .collect();
-    for node in corners.iter().skip(29).step_by(61).take(2) {
-        town.nodes[*node].elevation_m = town.nodes[*node].elevation_m.map(|metres| metres * 3.2808);
+    // High on the hill, where a filler of 0 digs a pit.
+    let stands_out = |node: &usize| {
+        let here = town.mains_at(*node);
+        let far_end = |main: &usize| town.mains[*main].ends[0] + town.mains[*main].ends[1] - *node;
+        let level = |main: &usize| town.nodes[far_end(main)].elevation_m.unwrap_or(0.0);
+        let short = |main: &usize| {
+            let (length_m, bare) = (town.mains[*main].length_m(), town.mains[*main].tees.is_empty());
+            bare && length_m > 1.0 && level(main) > (0.52 * length_m).max(31.0)
+        };
+        let lowest = here.iter().map(level).fold(f64::INFINITY, f64::min);
+        let highest = here.iter().map(level).fold(0.0, f64::max);
+        here.len() >= 2 && here.iter().all(short) && highest - lowest < 14.0
+    };
+    let on_hill =
+        |node: &Node| node.drawn && node.kind == "node" && node.elevation_m.is_some_and(|metres| metres > 38.0);
+    let high = (0..town.nodes.len()).filter(|node| on_hill(&town.nodes[*node]) && stands_out(node));
+    let pits: Vec<usize> = high.collect();
+    let apart = |node: &&usize| distance(town.nodes[**node].at, town.nodes[pits[0]].at) > 200.0;
+    let second = *pits.iter().find(apart).expect("the hill has corners apart");
+    for node in [pits[0], second] {
+        let node = &node;
+        town.nodes[*node].elevation_m = Some(0.0);
         let id = node_id(town, *node);
         on(
             town,
             "nodes",
             id,
-            ["elevation in feet among metres", "elevation-doubtful"],
+            ["elevation never surveyed", "elevation-doubtful"],
             String::new(),
-            "3.28 times the ground",
+            "0 on the hill",
         );
     }
     for node in corners.iter().skip(7).step_by(23).take(6) {

@@ -47,6 +47,14 @@ impl Main {
         }
     }
 
+    /// The lines it is drawn by that have a length.
+    pub fn lines(&self) -> &[Vec<Point>] {
+        match &self.drawing {
+            Drawing::Lines(lines) if length(&lines[0]) > 0.0 => lines,
+            _ => &[],
+        }
+    }
+
     pub fn length_m(&self) -> f64 {
         self.line().map_or(0.0, |line| length(line))
     }
