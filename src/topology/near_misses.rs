@@ -71,12 +71,25 @@ pub(super) fn find(work: &mut Work) -> u32 {
     count
 }
 
-/// The nearest main that a free end may be meant to meet.
+/// The nearest main that a free end may be meant to meet. Of several at one place it is the one that least speaks against.
 fn nearest_other(work: &Work, spot: u32, end: End) -> Option<Miss> {
     let look_m = work.settings.look_m;
-    let near = work.hits.of(spot).iter();
-    near.take_while(|hit| hit.distance_m <= look_m)
-        .find_map(|&hit| miss(work, spot, end, hit))
+    let mut nearest: Option<Miss> = None;
+    for &hit in work.hits.of(spot).iter().take_while(|hit| hit.distance_m <= look_m) {
+        if nearest
+            .as_ref()
+            .is_some_and(|known| hit.distance_m > known.distance_m + work.settings.touch_m)
+        {
+            break;
+        }
+        if let Some(found) = miss(work, spot, end, hit) {
+            let order = |miss: &Miss| (miss.against.len(), work.lines.rank(miss.other));
+            if nearest.as_ref().is_none_or(|known| order(&found) < order(known)) {
+                nearest = Some(found);
+            }
+        }
+    }
+    nearest
 }
 
 fn miss(work: &Work, spot: u32, end: End, hit: Hit) -> Option<Miss> {

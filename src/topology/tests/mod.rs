@@ -4,4 +4,5 @@ mod draw;
 mod faults;
 mod points;
 mod properties;
+mod speed;
 mod town;
