@@ -11,3 +11,4 @@ mod numbers;
 mod properties;
 mod sample_town;
 mod study_file;
+mod tidy;
