@@ -262,9 +262,10 @@ fn every_source_file_says_what_it_is_about() {
 
 #[test]
 fn a_file_has_one_subject() {
+    let is_table = |path: &Path| TABLES.iter().any(|table| path == Path::new(table));
     let long = program()
         .into_iter()
-        .filter(|(_, text)| text.lines().count() > MOST_LINES);
+        .filter(|(path, text)| text.lines().count() > MOST_LINES && !is_table(path));
     assert_none(
         &long
             .map(|(path, text)| format!("{}: {} lines", path.display(), text.lines().count()))
