@@ -242,6 +242,10 @@ codes! {
         "A closed valve stands where three or more mains meet, and does not say which one it shuts."
         "Each choice gives another network; none was made, and the valve shuts nothing."
         "Name the main in the valve's `main` column, or move the valve onto it."
+    ValveClosed "valve-closed" Map Note
+        "A closed valve cuts a main: no water passes there."
+        "A valve left shut after work is a common cause of low pressure and poor fire flow."
+        "Check in the field that it is meant to be shut."
     ValveMainUnknown "valve-main-unknown" Map Warning
         "A valve names a main that is not in the map, or not within reach."
         "The valve was put on the nearest fitting main instead."

@@ -6,13 +6,14 @@
 //! that slipped is loose; a real main goes on.
 //!
 //! One of the two is calculated. When they agree in diameter, year and zone (an unknown one contradicts nothing) it is the
-//! one that is tied in better, else the earlier row. When they differ it is the smaller, and the finding is serious.
+//! one that is tied in better, else the earlier row. When they differ it is the smaller, of two of one size the one whose
+//! zone is that of the mains around its ends, and the finding is serious.
 
-use std::collections::HashMap;
+use std::collections::{HashMap, HashSet};
 
 use petgraph::unionfind::UnionFind;
 use rstar::RTree;
-use rstar::primitives::GeomWithData;
+use rstar::primitives::{GeomWithData, Line};
 
 use super::CleanLine;
 use super::cleaning::Work;
@@ -46,8 +47,9 @@ pub(super) fn leave_out(work: &mut Work) -> u32 {
     members.iter_mut().for_each(|set| set.sort_unstable());
     members.sort_unstable();
     let mut left_out = vec![false; work.drawn.len()];
+    let around = ZonesAround::of(work, members.iter().flatten().copied());
     for set in &members {
-        let kept = kept(work, &ends, set);
+        let kept = kept(work, &ends, &around, set);
         for &line in set.iter().filter(|&&line| line != kept) {
             left_out[line as usize] = true;
             say(work, line, kept);
@@ -59,6 +61,38 @@ pub(super) fn leave_out(work: &mut Work) -> u32 {
         !left_out[index - 1]
     });
     left_out.iter().filter(|out| **out).count() as u32
+}
+
+/// How many mains of its own zone lie at the ends of each line that has a copy.
+struct ZonesAround(HashMap<u32, usize>);
+
+impl ZonesAround {
+    fn of(work: &Work, lines: impl Iterator<Item = u32>) -> Self {
+        let zone = |line: u32| work.assets.mains[work.drawn[line as usize].main as usize].zone;
+        let zoned: Vec<u32> = lines.filter(|&line| zone(line).is_some()).collect();
+        if zoned.is_empty() {
+            return ZonesAround(HashMap::new());
+        }
+        let segments = work.drawn.iter().enumerate().flat_map(|(line, drawn)| {
+            let pairs = drawn.vertices.windows(2);
+            pairs.map(move |pair| GeomWithData::new(Line::new(pair[0], pair[1]), line as u32))
+        });
+        let tree = RTree::bulk_load(segments.collect());
+        let reach_m = work.settings.tolerance_m.max(work.settings.touch_m);
+        let alike = |line: u32| {
+            let near = [first(&work.drawn[line as usize]), last(&work.drawn[line as usize])]
+                .into_iter()
+                .flat_map(|end| tree.locate_within_distance(end, reach_m * reach_m))
+                .map(|found| found.data);
+            let of_zone: HashSet<u32> = near.filter(|&other| zone(other) == zone(line)).collect();
+            of_zone.len()
+        };
+        ZonesAround(zoned.into_iter().map(|line| (line, alike(line))).collect())
+    }
+
+    fn alike(&self, line: u32) -> usize {
+        self.0.get(&line).copied().unwrap_or(0)
+    }
 }
 
 /// How many lines end at each place.
@@ -146,7 +180,7 @@ fn lies_on(line: &CleanLine, other: &CleanLine, within_m: f64) -> bool {
 }
 
 /// Which of a set is calculated.
-fn kept(work: &Work, ends: &Ends, set: &[u32]) -> u32 {
+fn kept(work: &Work, ends: &Ends, around: &ZonesAround, set: &[u32]) -> u32 {
     let main = |line: u32| &work.assets.mains[work.drawn[line as usize].main as usize];
     let zone = |line: u32| main(line).zone.and_then(|zone| work.assets.zones.get(zone as usize));
     let by = |&a: &u32, &b: &u32| {
@@ -154,6 +188,7 @@ fn kept(work: &Work, ends: &Ends, set: &[u32]) -> u32 {
         let tied_in = |line: u32| ends.tied_in(&work.drawn[line as usize]);
         (diameter(a).total_cmp(&diameter(b)))
             .then(tied_in(b).cmp(&tied_in(a)))
+            .then(around.alike(b).cmp(&around.alike(a)))
             .then(main(b).year.cmp(&main(a).year))
             .then(zone(b).cmp(&zone(a)))
             .then(a.cmp(&b))

@@ -23,10 +23,20 @@ pub(super) fn cut_in(work: &mut Work) -> u32 {
             Some(at) => place_one(work, index, at),
             None => None,
         };
-        cuts += u32::from(matches!(place, Some(ValvePlace::Cut { .. })));
+        if let Some(ValvePlace::Cut { main, node_a, .. }) = place {
+            cuts += 1;
+            say_closed(work, index, main, node_a);
+        }
         work.map.valves.push(place);
     }
     cuts
+}
+
+fn say_closed(work: &mut Work, index: usize, main: u32, node: u32) {
+    let (valve, main) = (work.assets.valves[index].origin, work.feature(main));
+    let message = Sentence::new().feature(valve).text(" is closed and cuts ").feature(main);
+    let at = work.map.nodes[node as usize].at;
+    work.findings.push(Finding::new(Code::ValveClosed, message).on(valve).with(main).at(at));
 }
 
 fn place_one(work: &mut Work, index: usize, at: Point) -> Option<ValvePlace> {
