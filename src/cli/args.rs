@@ -37,7 +37,7 @@ pub enum Command {
 
 const CHECK_EXAMPLES: &str = "\
 Examples:
-  gradeline check sample-data/saltby/study.toml
+  gradeline check sample-data/quenlow/study.toml
   gradeline check study.toml --out results --format shapefile
   gradeline check study.toml --fail-at serious --quiet
 
@@ -49,7 +49,7 @@ Exit codes:
 
 const MAP_EXAMPLES: &str = "\
 Examples:
-  gradeline map sample-data/saltby/study.toml
+  gradeline map sample-data/quenlow/study.toml
   gradeline map study.toml --json
 
 Exit codes:
