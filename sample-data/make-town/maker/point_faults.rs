@@ -34,9 +34,9 @@ fn closed_valves(town: &mut Town, lcg: &mut Lcg) {
             town,
             "valves",
             valve,
-            ["closed valve", ""],
+            ["closed valve", "valve-closed"],
             name,
-            "shut in the middle of a main of a loop: a state of the map, no finding of its own",
+            "shut in the middle of a main of a loop",
         );
     }
     let mut made = 0;
