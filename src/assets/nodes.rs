@@ -1,17 +1,22 @@
 //! Node points: fittings, tanks, wells, anything with a known head, elevation or demand.
 
+use std::collections::HashSet;
+
 use super::columns::{self, Slot, Wanted};
 use super::desk::{Desk, features};
 use super::selection::by_word;
 use super::sentinels::Meaning;
-use super::settings::{NodesColumns, UnitColumn};
+use super::settings::{AssetSettings, NodesColumns, SourceAt, UnitColumn};
 use super::{Basis, NodeKind, NodePoint, Role, Valued, cells, words};
 use crate::finding::{Code, Error, FeatureRef, Finding, Sentence, Severity};
 use crate::units::Quantity;
 
+/// Plain nodes with a head are taken for results of an earlier calculation from this number on, if they are half of all.
+const TOO_MANY_HEADS: usize = 20;
+
 impl Desk<'_> {
     /// Reads a layer of node points.
-    pub fn read_nodes(&mut self, wanted: &NodesColumns) -> Result<Vec<NodePoint>, Error> {
+    pub fn read_nodes(&mut self, wanted: &NodesColumns, settings: &AssetSettings) -> Result<Vec<NodePoint>, Error> {
         let layer = wanted.common.layer;
         self.read_ids(&wanted.common, Role::Node)?;
         let taking_part = self.select(&wanted.common, Role::Node, true)?;
@@ -41,7 +46,51 @@ impl Desk<'_> {
             })
             .collect();
         self.check_ids(&features(layer, &taking_part), Role::Node);
+        if let Some(head) = &wanted.head {
+            self.check_heads(layer, &head.column, &nodes, wanted.kind.is_some())?;
+            self.say_without_head(&nodes, settings);
+        }
         Ok(nodes)
+    }
+
+    /// Stops when plain nodes have heads throughout: those are results of an earlier calculation, and as known heads would
+    /// make every node a source.
+    fn check_heads(&self, layer: u16, column: &str, nodes: &[NodePoint], kinds_known: bool) -> Result<(), Error> {
+        let plain = nodes.iter().filter(|node| node.kind == NodeKind::Node);
+        let with_head = plain.clone().filter(|node| node.head_m.is_some()).count();
+        if !kinds_known || with_head < TOO_MANY_HEADS || 2 * with_head < plain.count() {
+            return Ok(());
+        }
+        Err(Error::input(
+            &self.layer(layer).source.path,
+            format!("{with_head} plain nodes have a head in `{column}`: as known heads they would all be sources"),
+            "Name a column that holds known heads alone as `head`, or leave the key out and write a `[[source]]`.",
+        ))
+    }
+
+    /// Says which sources and tanks have no head, neither on the map nor in the study: they feed nothing.
+    fn say_without_head(&mut self, nodes: &[NodePoint], settings: &AssetSettings) {
+        let mut given: HashSet<&str> = settings.heads_by_case.iter().map(String::as_str).collect();
+        given.extend(settings.sources.iter().filter_map(|source| match &source.at {
+            SourceAt::Id(id) => Some(id.as_str()),
+            SourceAt::Point(_) => None,
+        }));
+        let without = nodes
+            .iter()
+            .filter(|node| node.kind != NodeKind::Node && node.head_m.is_none());
+        let origins = without.filter_map(|node| node.origin);
+        let missed: Vec<Finding> = origins
+            .filter(|origin| !self.names.id(*origin).is_some_and(|id| given.contains(id)))
+            .map(|origin| {
+                let said = Sentence::new()
+                    .feature(origin)
+                    .text(" is a source or a tank without a known head: it feeds nothing");
+                Finding::new(Code::ValueUnreadable, said).on(origin)
+            })
+            .collect();
+        self.report(missed, |count| {
+            format!("{count} sources and tanks have no known head: they feed nothing").into()
+        });
     }
 
     fn node_kinds(&mut self, wanted: &NodesColumns, taking_part: &[bool]) -> Result<Vec<NodeKind>, Error> {

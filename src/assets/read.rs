@@ -74,7 +74,7 @@ pub fn read(
     }
     let mut nodes = Vec::new();
     for layer in &settings.nodes {
-        nodes.extend(desk.read_nodes(layer)?);
+        nodes.extend(desk.read_nodes(layer, settings)?);
     }
     let mut hydrants = Vec::new();
     for layer in &settings.hydrants {

@@ -193,6 +193,8 @@ pub struct AssetSettings {
     pub valves: Vec<ValvesColumns>,
     /// Sources of the study.
     pub sources: Vec<StudySource>,
+    /// Ids of the nodes whose head the study gives by case: none is missed on the map.
+    pub heads_by_case: Vec<String>,
     /// The friction law.
     pub law: FrictionLaw,
     /// C-factor of a main about which nothing is known.

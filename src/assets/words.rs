@@ -165,7 +165,7 @@ pub(super) fn valve_kind(text: &str) -> Valves {
     let has = |part: &[&str]| part.iter().any(|part| said.split(' ').any(|word| word == *part));
     let device = if has(&["check", "nrv", "reflux", "cv"]) || said.contains("non return") || has(&["backflow"]) {
         Some("check valve")
-    } else if has(&["prv", "reducing", "reducer"]) {
+    } else if has(&["prv", "reducing"]) {
         Some("pressure reducing valve")
     } else if has(&["psv", "sustaining"]) {
         Some("pressure sustaining valve")

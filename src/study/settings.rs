@@ -62,6 +62,7 @@ pub(super) fn parse(path: &Path, text: &str) -> Result<Study, Error> {
         customers: Vec::new(),
         valves: Vec::new(),
         sources: sources(&top)?,
+        heads_by_case: Vec::new(),
         law,
         default_c_factor: or_assumed(friction.plain("default_c", 20.0..=165.0)?, DEFAULT_C),
         default_roughness_m: or_assumed(
@@ -80,6 +81,8 @@ pub(super) fn parse(path: &Path, text: &str) -> Result<Study, Error> {
     let joining = joining(&top.section("joining", &empty)?)?;
     let limits = limits(&top.section("limits", &empty)?, &Limits::default())?;
     let cases = cases(&top, &limits)?;
+    let by_case = cases.iter().flat_map(|case| &case.tank_heads_m);
+    assets.heads_by_case = by_case.map(|(id, _)| id.trim().to_string()).collect();
     let fire = match top.sections("fire")?.pop() {
         Some(section) => Some(fire(&section, &cases, &mut assets)?),
         None => None,

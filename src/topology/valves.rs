@@ -34,9 +34,13 @@ pub(super) fn cut_in(work: &mut Work) -> u32 {
 
 fn say_closed(work: &mut Work, index: usize, main: u32, node: u32) {
     let (valve, main) = (work.assets.valves[index].origin, work.feature(main));
-    let message = Sentence::new().feature(valve).text(" is closed and cuts ").feature(main);
+    let message = Sentence::new()
+        .feature(valve)
+        .text(" is closed and cuts ")
+        .feature(main);
     let at = work.map.nodes[node as usize].at;
-    work.findings.push(Finding::new(Code::ValveClosed, message).on(valve).with(main).at(at));
+    work.findings
+        .push(Finding::new(Code::ValveClosed, message).on(valve).with(main).at(at));
 }
 
 fn place_one(work: &mut Work, index: usize, at: Point) -> Option<ValvePlace> {

@@ -33,7 +33,10 @@ fn main() {
     let stages = Stages(Mutex::new(Vec::new()));
     let begun = Instant::now();
     let study = Study::read(&folder.path().join("study.toml")).expect("a good study");
-    let options = RunOptions { out: Some(folder.path().join("results")), ..RunOptions::default() };
+    let options = RunOptions {
+        out: Some(folder.path().join("results")),
+        ..RunOptions::default()
+    };
     run(&study, &options, &stages).expect("a good run");
     let ended = Instant::now();
     let seen = stages.0.into_inner().expect("no stage panics");
@@ -60,7 +63,10 @@ fn write_town(folder: &Path, mains: usize) {
     let across = ((mains as f64 / 2.0).sqrt().ceil() as usize) + 1;
     let place = |column: usize, row: usize| {
         let (x, y) = (column as f64 * 0.001, row as f64 * 0.0008);
-        [10.0 + x + 0.0002 * (y * 900.0).sin(), -40.0 + y + 0.0002 * (x * 700.0).cos()]
+        [
+            10.0 + x + 0.0002 * (y * 900.0).sin(),
+            -40.0 + y + 0.0002 * (x * 700.0).cos(),
+        ]
     };
     let mut lines = String::from("{\"type\":\"FeatureCollection\",\"features\":[\n");
     let mut count = 0;
@@ -74,7 +80,11 @@ fn write_town(folder: &Path, mains: usize) {
                     break 'all;
                 }
                 let ([ax, ay], [bx, by]) = (place(column, row), place(to_column, to_row));
-                let bore_mm = if row % 16 == 0 || column % 16 == 0 { 400 } else { [100, 150, 200][(row * 7 + column) % 3] };
+                let bore_mm = if row % 16 == 0 || column % 16 == 0 {
+                    400
+                } else {
+                    [100, 150, 200][(row * 7 + column) % 3]
+                };
                 let comma = if count == 0 { "" } else { ",\n" };
                 let _ = write!(
                     lines,
@@ -94,7 +104,11 @@ fn write_town(folder: &Path, mains: usize) {
         for column in 0..across {
             let [x, y] = place(column, row);
             let comma = if row + column == 0 { "" } else { ",\n" };
-            let head = if row % 100 == 50 && column % 100 == 50 || row + column == 0 { "120.0" } else { "null" };
+            let head = if row % 100 == 50 && column % 100 == 50 || row + column == 0 {
+                "120.0"
+            } else {
+                "null"
+            };
             let _ = write!(
                 points,
                 "{comma}{{\"type\":\"Feature\",\"properties\":{{\"id\":\"N{row}-{column}\",\"elev_m\":{:.2},\"head_m\":{head},\"dem_lps\":0.03}},\"geometry\":{{\"type\":\"Point\",\"coordinates\":[{x:.8},{y:.8}]}}}}",
@@ -119,7 +133,11 @@ demand = { column = "dem_lps", unit = "lps" }
 name = "average day"
 demand_times = 1.0
 "#;
-    for (name, text) in [("mains.geojson", lines.as_str()), ("nodes.geojson", &points), ("study.toml", study)] {
+    for (name, text) in [
+        ("mains.geojson", lines.as_str()),
+        ("nodes.geojson", &points),
+        ("study.toml", study),
+    ] {
         std::fs::write(folder.join(name), text).expect("a temporary file can be written");
     }
 }

@@ -538,3 +538,33 @@ fn a_layer_that_lies_elsewhere_stops_the_run() {
         "{said}"
     );
 }
+
+#[test]
+fn heads_of_an_earlier_calculation_are_no_known_heads() {
+    let study = "[mains]\nfrom = \"m.geojson\"\n[nodes]\nfrom = \"n.geojson\"\nkind = \"kind\"\nhead = \"head_m\"";
+    let nodes = |head: fn(usize) -> Value| {
+        let rows: Vec<Value> = (0..30)
+            .map(|row| json!({"kind": "node", "head_m": head(row)}))
+            .collect();
+        [("m.geojson", mains(&[json!({})])), ("n.geojson", points(&rows))]
+    };
+    let said = error(study, &nodes(|_| json!(90)));
+    assert!(said.contains("30 plain nodes have a head in `head_m`"), "{said}");
+    assert!(read(study, &nodes(|row| if row < 3 { json!(90) } else { json!(null) })).is_ok());
+}
+
+#[test]
+fn a_tank_without_a_head_is_said_unless_a_case_gives_it() {
+    let study = "[mains]\nfrom = \"m.geojson\"\n[nodes]\nfrom = \"n.geojson\"\nid = \"id\"\nkind = \"kind\"\nhead = \"head_m\"\n";
+    let nodes = points(&[
+        json!({"id": "T1", "kind": "tank", "head_m": null}),
+        json!({"id": "S", "kind": "source", "head_m": 90}),
+    ]);
+    let layers = [("m.geojson", mains(&[json!({}), json!({})])), ("n.geojson", nodes)];
+    assert_eq!(
+        named(&read(study, &layers).unwrap(), Code::ValueUnreadable),
+        [["node T1"]]
+    );
+    let case = "[[case]]\nname = \"a\"\ntank_levels_m = { T1 = 80 }";
+    assert!(read(&format!("{study}{case}"), &layers).unwrap().findings.is_empty());
+}
