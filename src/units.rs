@@ -11,6 +11,10 @@ use std::fmt;
 pub const M_PER_INCH: f64 = 0.0254;
 /// Metres in an international foot (exact).
 pub const M_PER_FOOT: f64 = 0.3048;
+/// Metres in an international mile of 5280 feet (exact).
+pub const M_PER_MILE: f64 = 5280.0 * M_PER_FOOT;
+/// Metres in a kilometre.
+pub const M_PER_KM: f64 = 1000.0;
 /// Metres in a US survey foot, 1200/3937 (exact).
 pub const M_PER_US_SURVEY_FOOT: f64 = 1200.0 / 3937.0;
 /// Metres in a millimetre (exact).

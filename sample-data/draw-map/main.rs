@@ -77,11 +77,9 @@ struct Sheet {
 impl Sheet {
     fn around(mains: &[Value]) -> Sheet {
         let mut points: Vec<[f64; 2]> = mains.iter().flat_map(lines).flatten().collect();
-        // A main digitised in the wrong place must not shrink the town to a dot: the outermost hundredth is left out.
         let mut span = |axis: usize| {
             points.sort_by(|a, b| a[axis].total_cmp(&b[axis]));
-            let cut = points.len() / 200;
-            (points[cut][axis], points[points.len() - 1 - cut][axis])
+            (points[0][axis], points[points.len() - 1][axis])
         };
         let ((west, east), (south, north)) = (span(0), span(1));
         let narrowing = (0.5 * (south + north)).to_radians().cos();
@@ -242,7 +240,7 @@ fn legend(out: &mut String, sheet: &Sheet) -> std::fmt::Result {
     )?;
     let bar = 500.0 * sheet.px_per_m;
     row(
-        &format!("<path d=\"M-8 14h{bar:.1}m0 -5v10m-{bar:.1} 0v-10\" stroke=\"#3a3a3a\"/>"),
+        &format!("<path d=\"M-8 18h{bar:.1}m0 -5v10m-{bar:.1} 0v-10\" fill=\"none\" stroke=\"#3a3a3a\"/>"),
         "500 m",
     )
 }

@@ -43,6 +43,12 @@ pub(super) struct Desk<'a> {
     pub classes: Interned,
 }
 
+/// The column of a layer without rows.
+static NO_ROWS: Column = Column {
+    name: String::new(),
+    cells: Vec::new(),
+};
+
 impl<'a> Desk<'a> {
     /// The layer of an index.
     pub fn layer(&self, index: u16) -> &'a Layer {
@@ -52,6 +58,10 @@ impl<'a> Desk<'a> {
     /// A column that the study names.
     pub fn column(&self, layer: u16, key: &str, name: &str) -> Result<&'a Column, Error> {
         let layer = self.layer(layer);
+        // GeoJSON without features has no columns to look for; a layer that is empty today is no error.
+        if layer.rows() == 0 && layer.column_names.is_empty() {
+            return Ok(&NO_ROWS);
+        }
         layer.column(name).ok_or_else(|| {
             let nearest = crate::finding::nearest(name, layer.column_names.iter().map(String::as_str));
             let todo = match nearest {

@@ -3,8 +3,8 @@
 use serde_json::{Map, Value, json};
 
 use super::facts::{self, CAUTIONS};
-use super::{Report, plural};
-use crate::finding::About;
+use super::{Report, Words, plural};
+use crate::finding::{About, FeatureRef};
 use crate::screening::{FireRun, Flag};
 use crate::units::UnitSystem;
 
@@ -62,6 +62,11 @@ fn settings(report: &Report<'_>) -> Value {
 
 fn topology(report: &Report<'_>) -> Value {
     let map = report.inputs.map;
+    let called = |feature: FeatureRef| report.called(feature);
+    let words = Words {
+        called: &called,
+        units: UnitSystem::Si,
+    };
     let joins: Vec<Value> = facts::joins(report)
         .into_iter()
         .map(|(kind, (made, apart))| json!({ "kind": kind.word(), "joined": made, "left_apart": apart }))
@@ -94,7 +99,7 @@ fn topology(report: &Report<'_>) -> Value {
         "joins": joins,
         "tolerance_table": table,
         "tolerance_suggested_m": map.tolerance.as_ref().map(|table| table.suggested_m),
-        "tolerance_reason": map.tolerance.as_ref().map(|table| &table.reason),
+        "tolerance_reason": map.tolerance.as_ref().map(|table| words.sentence(&table.reason)),
     })
 }
 

@@ -60,7 +60,7 @@ fn tested(out: &mut String, report: &Report<'_>, words: &Words<'_>) -> std::fmt:
         return writeln!(out);
     };
     let coverage = &calculation.screened.coverage;
-    let length = words.number(coverage.length_m, Quantity::Length);
+    let length = words.distance(coverage.length_m);
     let untested = coverage.untested_share();
     write!(
         out,
@@ -95,7 +95,7 @@ fn read(out: &mut String, report: &Report<'_>) -> std::fmt::Result {
         let file = layer.source.path.file_name().unwrap_or_default().to_string_lossy();
         writeln!(
             out,
-            "  {:>8} {} from {file} ({})",
+            "  {:>8} {} from {file}, {}",
             thousands(layer.rows() as usize),
             plural(role),
             layer.crs.name
@@ -103,11 +103,7 @@ fn read(out: &mut String, report: &Report<'_>) -> std::fmt::Result {
     }
     let left_out = report.assets().left_out.len();
     if left_out > 0 {
-        writeln!(
-            out,
-            "  {:>8} of the mains left out by rules of the study",
-            thousands(left_out)
-        )?;
+        writeln!(out, "  {:>8} mains left out by rules of the study", thousands(left_out))?;
     }
     Ok(())
 }
@@ -126,15 +122,14 @@ fn joined(out: &mut String, report: &Report<'_>, words: &Words<'_>) -> std::fmt:
             JoinKind::Crossing => writeln!(out, "  {:>8} bare crossings, never joined", thousands(*apart))?,
             JoinKind::NearMiss => writeln!(out, "  {:>8} near misses left apart", thousands(*apart))?,
             JoinKind::ZonesApart => writeln!(out, "  {:>8} contacts of two zones kept apart", thousands(*apart))?,
-            kind => writeln!(out, "  {:>8} {}", thousands(*made), kind.word())?,
+            kind => writeln!(out, "  {:>8} {}", thousands(*made), made_words(*kind))?,
         }
     }
     let pieces = map.piece_length_m.len();
     writeln!(
         out,
-        "  {} in {}, {} connected",
-        counted(map.parts.len(), "part"),
-        counted(map.lines.len(), "line"),
+        "  {:>8} parts to calculate with, {}",
+        thousands(map.parts.len()),
         pieces_word(pieces)
     )?;
     let Some(table) = &map.tolerance else { return Ok(()) };
@@ -157,15 +152,28 @@ fn joined(out: &mut String, report: &Report<'_>, words: &Words<'_>) -> std::fmt:
         out,
         "  suggested: {}. {}",
         words.number(table.suggested_m, Quantity::Length),
-        table.reason
+        words.sentence(&table.reason)
     )
+}
+
+/// What is counted of a kind of join that was made.
+fn made_words(kind: JoinKind) -> &'static str {
+    match kind {
+        JoinKind::EndOnEnd => "ends that meet exactly",
+        JoinKind::EndNearEnd => "ends joined to ends across a gap",
+        JoinKind::EndOnMiddle => "ends on the middle of a main",
+        JoinKind::EndNearMiddle => "ends joined to the middle of a main across a gap",
+        JoinKind::Overshoot => "overshoots joined where they cross, the tail left out",
+        JoinKind::EndOnPoint => "ends joined at a point feature between them",
+        kind => kind.word(),
+    }
 }
 
 fn pieces_word(pieces: usize) -> String {
     if pieces == 1 {
-        "all".into()
+        "all hanging together".into()
     } else {
-        format!("in {} pieces", thousands(pieces))
+        format!("in {} pieces that do not hang together", thousands(pieces))
     }
 }
 

@@ -1,7 +1,7 @@
 //! Words: sentences and numbers as they are read, with the user's own ids and the units asked for.
 
 use crate::finding::{FeatureRef, Piece, Sentence};
-use crate::units::{Quantity, Unit, UnitSystem};
+use crate::units::{M_PER_KM, M_PER_MILE, Quantity, Unit, UnitSystem};
 
 /// Puts findings into words.
 #[derive(Clone, Copy)]
@@ -21,6 +21,14 @@ impl Words<'_> {
             Piece::Number(value, quantity) => self.number(*value, *quantity),
         };
         sentence.pieces().iter().map(of_piece).collect()
+    }
+
+    /// A long length, m, as kilometres or miles.
+    pub fn distance(&self, length_m: f64) -> String {
+        match self.units {
+            UnitSystem::Si => format!("{:.1} km", length_m / M_PER_KM),
+            UnitSystem::Us => format!("{:.1} miles", length_m / M_PER_MILE),
+        }
     }
 
     /// A number in SI, with its unit, to a reader's digits.

@@ -19,6 +19,9 @@ use crate::watch::{Watch, step};
 /// How many features a finding about already low places names.
 const NAMED_AT_MOST: usize = 50;
 
+/// Two flows that agree to this share are one.
+const SAME: f64 = 1.0 - 1e-9;
+
 /// What limits a hydrant.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub enum LimitBy {
@@ -352,7 +355,8 @@ impl Run<'_> {
         };
         let finite = |flow: f64| Some(flow).filter(|flow| flow.is_finite());
         let Some(alone) = solve(&[]) else { return };
-        verdict.available_m3_per_s = finite(alone.flow_m3_per_s);
+        let alone_flow = alone.flow_m3_per_s;
+        verdict.available_m3_per_s = finite(alone_flow);
         verdict.limit_by = Some(limit_by(own.node, &alone.limit));
         if self.fire.keep_elsewhere_m.is_none() {
             return;
@@ -366,7 +370,11 @@ impl Run<'_> {
         };
         let Some(first) = first else { return };
         verdict.safe_m3_per_s = finite(first.flow_m3_per_s);
-        verdict.limit_by = Some(limit_by(own.node, &first.limit));
+        verdict.limit_by = Some(match limit_by(own.node, &first.limit) {
+            // Its own node, but at a level of a customer who draws there, above the hydrant's own.
+            LimitBy::OwnPressure if first.flow_m3_per_s < alone_flow * SAME => LimitBy::Elsewhere(own.node),
+            limit => limit,
+        });
     }
 
     fn pressure_while_giving(&self, node: usize, needed: f64, ground_m: f64) -> Option<f64> {

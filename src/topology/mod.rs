@@ -34,7 +34,7 @@ mod zones;
 mod tests;
 
 use crate::assets::{Assets, Point};
-use crate::finding::Checked;
+use crate::finding::{Checked, Sentence};
 
 /// How mains are joined. Every threshold of this room.
 #[derive(Clone, Debug, PartialEq)]
@@ -220,7 +220,7 @@ pub struct ToleranceTable {
     /// The tolerance this map asks for, m.
     pub suggested_m: f64,
     /// Why, in a sentence.
-    pub reason: String,
+    pub reason: Sentence,
 }
 
 /// How many rows each cleaning step touched.

@@ -11,6 +11,8 @@ use super::lines::End;
 use super::overshoots::free_end;
 use super::web::{Place, Web};
 use super::{JoinSettings, ToleranceRow, ToleranceTable};
+use crate::finding::Sentence;
+use crate::units::Quantity;
 
 /// The tolerances compared, m.
 const COMPARED_M: [f64; 9] = [0.0, 0.001, 0.01, 0.1, 0.25, 0.5, 1.0, 2.0, 5.0];
@@ -146,7 +148,8 @@ fn row(work: &Work, tolerance_m: f64, joins: u32, joined: UnionFind<u32>, total_
 }
 
 /// The tolerance in the widest empty stretch above the smallest distances, and why.
-fn suggest(candidates: &[Candidate], settings: &JoinSettings) -> (f64, String) {
+fn suggest(candidates: &[Candidate], settings: &JoinSettings) -> (f64, Sentence) {
+    let length = |sentence: Sentence, m: f64| sentence.number(m, Quantity::Length);
     let default_m = JoinSettings::default().tolerance_m;
     let distances: Vec<f64> = candidates
         .iter()
@@ -154,16 +157,17 @@ fn suggest(candidates: &[Candidate], settings: &JoinSettings) -> (f64, String) {
         .filter(|&d| d > settings.touch_m)
         .collect();
     let Some(&nearest_m) = distances.first() else {
-        let reason = format!(
-            "no free end lies within {FARTHEST_M} m of another main without touching it: every tolerance gives the same network"
-        );
+        let reason = length(Sentence::from("No free end lies within "), FARTHEST_M);
+        let reason = reason.text(" of another main without touching it: every tolerance gives the same network.");
         return (default_m, reason);
     };
     if nearest_m > default_m {
         let suggested_m = round_between(settings.touch_m, nearest_m.min(default_m));
-        let reason = format!(
-            "the nearest free end that touches nothing lies {nearest_m:.2} m from another main: below that every tolerance gives the same network"
+        let reason = length(
+            Sentence::from("The nearest free end that touches nothing lies "),
+            nearest_m,
         );
+        let reason = reason.text(" from another main: below that every tolerance gives the same network.");
         return (suggested_m, reason);
     }
     // An empty stretch counts by its width as a share of where it begins; a decimetre more keeps the smallest apart.
@@ -178,10 +182,18 @@ fn suggest(candidates: &[Candidate], settings: &JoinSettings) -> (f64, String) {
     }
     let suggested_m = round_between(low, high);
     let count = distances.iter().filter(|&&d| d <= low).count();
-    let reason = format!(
-        "{count} free ends lie {nearest_m:.3} to {low:.3} m from another main, and none between {low:.3} and {high:.3} m: {suggested_m} m lies in that empty stretch"
-    );
-    (suggested_m, reason)
+    let lie = if count == 1 {
+        "1 free end lies "
+    } else {
+        &format!("{count} free ends lie ")
+    };
+    let reason = length(Sentence::from(lie), nearest_m).text(" to ");
+    let reason = length(reason, low).text(" from another main, and none between ");
+    let reason = length(length(reason, low).text(" and "), high).text(": ");
+    (
+        suggested_m,
+        length(reason, suggested_m).text(" lies in that empty stretch."),
+    )
 }
 
 /// A length that reads well between two, near the middle of their ratio.

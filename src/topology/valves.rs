@@ -25,7 +25,10 @@ pub(super) fn cut_in(work: &mut Work) -> u32 {
         };
         if let Some(ValvePlace::Cut { main, node_a, .. }) = place {
             cuts += 1;
-            say_closed(work, index, main, node_a);
+            // A zone valve is shut as a rule: nothing to say.
+            if work.assets.valves[index].kind == ValveKind::Gate {
+                say_closed(work, index, main, node_a);
+            }
         }
         work.map.valves.push(place);
     }
