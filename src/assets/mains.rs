@@ -154,6 +154,11 @@ impl Desk<'_> {
     ) -> Result<Vec<Option<Valued<f64>>>, Error> {
         let layer = wanted.common.layer;
         let Some(column) = &wanted.diameter else {
+            let name = &self.layer(layer).name;
+            let said =
+                format!("the study names no `diameter` column for {name}: the bore of every main in it is assumed");
+            let finding = Finding::new(Code::DiameterMissing, said.into()).severity(Severity::Serious);
+            self.findings.push(finding);
             return Ok(vec![None; taking_part.len()]);
         };
         let asked = Wanted {

@@ -31,11 +31,15 @@ impl Done {
         if let Err(cause) = print(&self.text) {
             return Stop::Output(cause).say();
         }
-        ExitCode::from(match (self.not_proved, self.failing_findings) {
+        ExitCode::from(self.code())
+    }
+
+    fn code(&self) -> u8 {
+        match (self.not_proved, self.failing_findings) {
             (true, _) => NOT_PROVED,
             (false, true) => FINDINGS,
             (false, false) => DONE,
-        })
+        }
     }
 }
 
@@ -82,5 +86,32 @@ fn print(text: &str) -> io::Result<()> {
     match out.write_all(text.as_bytes()).and_then(|()| out.flush()) {
         Err(cause) if cause.kind() == io::ErrorKind::BrokenPipe => Ok(()),
         other => other,
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn that_a_case_is_not_proved_weighs_more_than_any_finding() {
+        let code = |not_proved, failing_findings| {
+            let text = String::new();
+            Done {
+                text,
+                failing_findings,
+                not_proved,
+            }
+            .code()
+        };
+        assert_eq!(
+            [
+                code(false, false),
+                code(false, true),
+                code(true, false),
+                code(true, true)
+            ],
+            [0, 1, 3, 3]
+        );
     }
 }

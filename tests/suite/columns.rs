@@ -3,7 +3,7 @@
 use std::fs;
 
 use gradeline::assets::{self, Basis, Friction, MainKind, NamedMain, NodeKind, Reading, UnitFrom, ValveKind};
-use gradeline::finding::{Checked, Code, Error, Finding};
+use gradeline::finding::{Checked, Code, Error, Finding, Severity};
 use gradeline::layers::{Layer, LayerSet, LocalPlane, ReadOptions};
 use gradeline::study::Study;
 use serde_json::{Value, json};
@@ -567,4 +567,14 @@ fn a_tank_without_a_head_is_said_unless_a_case_gives_it() {
     );
     let case = "[[case]]\nname = \"a\"\ntank_levels_m = { T1 = 80 }";
     assert!(read(&format!("{study}{case}"), &layers).unwrap().findings.is_empty());
+}
+
+#[test]
+fn a_layer_without_a_diameter_column_is_one_serious_finding() {
+    let read = read_mains("", &[json!({"id": 1}), json!({"id": 2})]);
+    assert_eq!(read.findings.len(), 1);
+    assert_eq!(
+        (read.findings[0].code, read.findings[0].severity),
+        (Code::DiameterMissing, Severity::Serious)
+    );
 }
