@@ -25,7 +25,7 @@ impl Progress {
     /// A line that appears after a second, unless it is not wanted or nobody looks.
     pub fn start(wanted: bool) -> Progress {
         let line = ProgressBar::with_draw_target(Some(0), ProgressDrawTarget::hidden());
-        if let Ok(style) = ProgressStyle::with_template("{spinner} {msg} {pos}/{len}  {elapsed}") {
+        if let Ok(style) = ProgressStyle::with_template("{spinner} {msg}  {elapsed}") {
             line.set_style(style);
         }
         let line = Arc::new(line);
@@ -52,9 +52,10 @@ impl Progress {
 
 impl Watch for Progress {
     fn progress(&self, stage: &'static str, done: u64, total: u64) {
-        self.line.set_message(stage);
-        self.line.set_length(total.max(1));
-        self.line.set_position(done);
+        self.line.set_message(match total {
+            0 => stage.to_string(),
+            total => format!("{stage}, {done} of {total}"),
+        });
     }
 }
 
