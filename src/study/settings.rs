@@ -134,7 +134,10 @@ impl Layers<'_> {
     /// Adds a layer, and reads what every layer has.
     fn add(&mut self, section: &Section<'_>, role: Role) -> Result<LayerColumns, Error> {
         let from = section.needed_text("from", &format!("from = \"{}s.geojson\"", role.word()))?;
-        if let Some((file, name)) = from.split_once('#') {
+        if let Some((file, name)) = from
+            .split_once('#')
+            .filter(|(file, _)| file.to_lowercase().ends_with(".gpkg"))
+        {
             let what = format!(
                 "{} names the layer `{name}` of {file}, a file of several layers",
                 section.called("from")
