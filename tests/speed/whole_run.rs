@@ -8,7 +8,7 @@ use std::path::Path;
 use std::sync::Mutex;
 use std::time::Instant;
 
-use gradeline::study::{RunOptions, Study, run};
+use gradeline::study::{RunOptions, Study, run_and_write};
 use gradeline::watch::Watch;
 
 /// Notes when each stage begins.
@@ -37,7 +37,7 @@ fn main() {
         out: Some(folder.path().join("results")),
         ..RunOptions::default()
     };
-    run(&study, &options, &stages).expect("a good run");
+    run_and_write(&study, &options, &stages).expect("a good run");
     let ended = Instant::now();
     let seen = stages.0.into_inner().expect("no stage panics");
     for (at, (stage, start)) in seen.iter().enumerate() {
