@@ -36,6 +36,8 @@ pub struct Calculation {
     pub cases: Vec<Solved>,
     /// The network when nobody draws.
     pub at_rest: Solved,
+    /// What was asked about fire flow.
+    pub fire: Option<Fire>,
     /// Verdicts and fire flows.
     pub screened: Screened,
     /// Every finding, graded, the most serious first.
@@ -54,12 +56,18 @@ pub fn map_only(assets: &Assets, joining: &JoinSettings, watch: &dyn Watch) -> R
     Ok((map, findings))
 }
 
-/// The whole job.
+/// The whole job. `noticed` are the findings of reading: they are graded with the rest, by what each fault does to the
+/// answer.
 ///
 /// # Errors
 /// [`Error::Cancelled`] alone: bad data is a finding, and a case that does not settle is a result.
-pub fn calculate(assets: &Assets, settings: &Settings, watch: &dyn Watch) -> Result<Calculation, Error> {
-    let mut findings = Vec::new();
+pub fn calculate(
+    assets: &Assets,
+    settings: &Settings,
+    noticed: Vec<Finding>,
+    watch: &dyn Watch,
+) -> Result<Calculation, Error> {
+    let mut findings = noticed;
     step(watch, "joining mains", 0, 0)?;
     let map = topology::infer(assets, &settings.joining).into_value(&mut findings);
     step(watch, "assembling the network", 0, 0)?;
@@ -82,9 +90,19 @@ pub fn calculate(assets: &Assets, settings: &Settings, watch: &dyn Watch) -> Res
         network,
         cases,
         at_rest,
+        fire: settings.fire.clone(),
         screened,
         findings,
     })
+}
+
+impl Calculation {
+    /// Whether every case, the network at rest and every fire flow settled.
+    pub fn is_proved(&self) -> bool {
+        let mut solved = self.cases.iter().chain([&self.at_rest]);
+        let mut hydrants = self.screened.fire.verdicts().into_iter().flatten();
+        solved.all(|solved| solved.outcome.is_ok()) && hydrants.all(|hydrant| !hydrant.unsolved)
+    }
 }
 
 /// Solves every case, each from the one before, and the network at rest.
@@ -112,6 +130,8 @@ fn solve_cases(
         cases.push(solve(case.clone(), limits, network.condition(case)));
     }
     step(watch, "solving", total - 1, total)?;
-    let at_rest = solve(Case::at_rest(), &settings.limits, network.condition(&Case::at_rest()));
+    let at_rest = Case::at_rest(network, settings.cases.iter().map(|(case, _)| case));
+    let condition = network.condition(&at_rest);
+    let at_rest = solve(at_rest, &settings.limits, condition);
     Ok((cases, at_rest))
 }

@@ -158,6 +158,9 @@ impl Solver {
     fn held_without_solving(&self, condition: &Condition, base: &State, own: Kept) -> Option<Held> {
         let at = self.number(own.node)?;
         let here = base.head_m[own.node.at()];
+        if here < own.head_m || here.is_nan() {
+            return Some(no_flow(Limit::AlreadyLow(own.node), Some(base.clone())));
+        }
         if at >= self.equations.free {
             let limit = self.greatest.iter().find(|limit| limit.node == at);
             return Some(match limit {
@@ -173,8 +176,7 @@ impl Solver {
                 },
             });
         }
-        let low = here < own.head_m || here.is_nan();
-        low.then(|| no_flow(Limit::AlreadyLow(own.node), Some(base.clone())))
+        None
     }
 
     /// The flow a source gives in a state, m3/s, its own draw included.

@@ -5,7 +5,7 @@ use std::collections::HashMap;
 use super::elevation::{doubtful_elevations, node_elevations};
 use super::invariants::assert_sound;
 use super::{Basis, Draw, Network, NodeIx, Part, Source, Valued};
-use crate::assets::{Assets, NodeKind};
+use crate::assets::{Assets, Main, MainKind, NodeKind};
 use crate::finding::{Checked, Code, Finding, Sentence};
 use crate::topology::PipeMap;
 use crate::units::Quantity;
@@ -49,11 +49,13 @@ pub fn assemble(assets: &Assets, map: &PipeMap, settings: &AssemblySettings) -> 
 }
 
 /// The bore of each main: its own; else the smallest of the mains it meets, so that the assumption errs on the side of
-/// low pressure; else the commonest of the map.
+/// low pressure; else the commonest of the map. Services and hydrant laterals say nothing about the main they leave.
 fn diameters(assets: &Assets, map: &PipeMap, settings: &AssemblySettings) -> Vec<Valued<f64>> {
     let mut smallest_at = vec![f64::INFINITY; map.nodes.len()];
+    let branch = |main: &Main| matches!(main.kind, MainKind::Service | MainKind::HydrantLateral);
     for part in &map.parts {
-        if let Some(known) = assets.mains[part.main as usize].diameter_m {
+        let main = &assets.mains[part.main as usize];
+        if let Some(known) = main.diameter_m.filter(|_| !branch(main)) {
             for node in [part.from, part.to] {
                 let smallest = &mut smallest_at[node as usize];
                 *smallest = smallest.min(known.value);

@@ -1,6 +1,6 @@
 //! Cases: demand conditions of a network, and the [`Condition`] each puts it in.
 
-use super::{Condition, Network};
+use super::{Condition, Network, Source};
 
 /// A demand condition that the study asks for.
 #[derive(Clone, Debug, PartialEq)]
@@ -16,13 +16,23 @@ pub struct Case {
 }
 
 impl Case {
-    /// Nobody draws.
-    pub fn at_rest() -> Case {
+    /// Nobody draws, and every source and tank stands at the highest head that any of the cases gives it.
+    pub fn at_rest<'a>(network: &Network, cases: impl Iterator<Item = &'a Case> + Clone) -> Case {
+        let highest = |source: &Source| {
+            let in_cases = cases
+                .clone()
+                .flat_map(|case| &case.heads_m)
+                .filter(|(point, _)| *point == source.point);
+            (
+                source.point,
+                in_cases.map(|(_, head_m)| *head_m).fold(source.head_m.value, f64::max),
+            )
+        };
         Case {
             name: "no draw".into(),
             demand_times: 0.0,
             demand_times_by: Vec::new(),
-            heads_m: Vec::new(),
+            heads_m: network.sources.iter().map(highest).collect(),
         }
     }
 

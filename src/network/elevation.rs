@@ -18,6 +18,8 @@ const SETTLED: f64 = 1e-10;
 const DOUBT_STEP_M: f64 = 30.0;
 /// ... if the ground would have to be this steep (rise over run) on the way.
 const DOUBT_SLOPE: f64 = 0.5;
+/// Nodes looked at around one for its known neighbours.
+const LOOKED_AT_MOST: usize = 24;
 
 /// The elevation of each node: read, interpolated, or unknown.
 pub(super) fn node_elevations(assets: &Assets, map: &PipeMap) -> Vec<Option<Valued<f64>>> {
@@ -109,6 +111,27 @@ impl Ground {
         }
     }
 
+    /// The known elevations next to a node, m, and the way to each along the mains, m. Looks a few nodes far.
+    fn next_known(&self, node: usize, known: &[Option<Valued<f64>>]) -> Vec<(f64, f64)> {
+        let mut found = Vec::new();
+        let mut seen = vec![node];
+        let mut open = vec![(node, 0.0)];
+        while let Some((at, way_m)) = open.pop() {
+            for &(to, weight) in self.around(at) {
+                let (to, way_m) = (to as usize, way_m + 1.0 / weight);
+                if seen.contains(&to) || seen.len() > LOOKED_AT_MOST {
+                    continue;
+                }
+                seen.push(to);
+                match known[to] {
+                    Some(there) => found.push((there.value, way_m)),
+                    None => open.push((to, way_m)),
+                }
+            }
+        }
+        found
+    }
+
     /// Conjugate gradients with the diagonal as preconditioner (Hestenes & Stiefel 1952) on the weighted means.
     fn settle(&self, fixed: &[bool], reached: &[bool], elevation_m: &mut [f64]) {
         let free: Vec<usize> = (0..fixed.len())
@@ -163,27 +186,25 @@ impl Ground {
     }
 }
 
-/// Known elevations far from all of their known neighbours: a cliff that the ground is unlikely to have.
+/// Known elevations far from all of their known neighbours: a cliff that the ground is unlikely to have. Neighbours are the
+/// next known ones along the mains, across nodes without an elevation.
 pub(super) fn doubtful_elevations(assets: &Assets, map: &PipeMap) -> Vec<Finding> {
     let known = known_elevations(assets, map);
     let ground = Ground::new(map);
     let mut findings = Vec::new();
     for (node, own) in known.iter().enumerate() {
         let Some(own) = own else { continue };
-        let near: Vec<(f64, f64)> = ground
-            .around(node)
-            .iter()
-            .filter_map(|(to, weight)| known[*to as usize].map(|there| (there.value, 1.0 / weight)))
-            .collect();
+        let near = ground.next_known(node, &known);
         let cliff = |(there, run_m): &(f64, f64)| {
             let rise_m = (own.value - there).abs();
             rise_m > DOUBT_STEP_M && rise_m > DOUBT_SLOPE * run_m
         };
-        let spread_m = near.iter().map(|near| near.0).fold(f64::NEG_INFINITY, f64::max)
-            - near.iter().map(|near| near.0).fold(f64::INFINITY, f64::min);
+        let heights = near.iter().map(|near| near.0);
+        let spread_m =
+            heights.clone().fold(f64::NEG_INFINITY, f64::max) - heights.clone().fold(f64::INFINITY, f64::min);
         // Two neighbours that agree outvote one that does not.
         if near.len() >= 2 && near.iter().all(cliff) && spread_m < DOUBT_STEP_M / 2.0 {
-            let mean_m = near.iter().map(|near| near.0).sum::<f64>() / near.len() as f64;
+            let mean_m = heights.sum::<f64>() / near.len() as f64;
             findings.extend(doubtful(assets, &map.nodes[node], own.value, mean_m));
         }
     }

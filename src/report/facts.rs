@@ -5,7 +5,7 @@ use std::collections::BTreeMap;
 use super::Report;
 use crate::assets::Role;
 use crate::finding::{About, Code, Finding, Severity};
-use crate::screening::{Flag, HydrantVerdict, NodeVerdict, Solved};
+use crate::screening::{Flag, HydrantVerdict, Limit, NodeVerdict, Solved};
 use crate::topology::JoinKind;
 
 /// The cautions that stand wherever results are read.
@@ -28,7 +28,6 @@ pub(super) struct OfCode<'a> {
 pub(super) fn by_code<'a>(report: &'a Report<'_>, about: About) -> Vec<OfCode<'a>> {
     let mut found: Vec<OfCode<'a>> = Vec::new();
     for finding in report
-        .inputs
         .findings
         .iter()
         .filter(|finding| finding.code.text().about == about)
@@ -50,7 +49,7 @@ pub(super) fn by_code<'a>(report: &'a Report<'_>, about: About) -> Vec<OfCode<'a
 pub(super) fn by_severity(report: &Report<'_>, about: About) -> [usize; 3] {
     let of = |severity: Severity| {
         let fits = |finding: &&Finding| finding.severity == severity && finding.code.text().about == about;
-        report.inputs.findings.iter().filter(fits).count()
+        report.findings.iter().filter(fits).count()
     };
     [of(Severity::Serious), of(Severity::Warning), of(Severity::Note)]
 }
@@ -105,33 +104,28 @@ pub(super) fn verdicts_on_defaults(report: &Report<'_>) -> (usize, usize) {
         return (0, 0);
     };
     let screened = &calculation.screened;
-    let (mut made, mut on_default) = (0, 0);
-    let mut count = |case: Option<usize>, of: fn(&crate::screening::Limits) -> bool| {
-        let Some(case) = case else { return };
-        made += 1;
-        on_default += usize::from(of(&calculation.cases.get(case).unwrap_or(&calculation.at_rest).limits));
-    };
-    let judged = |flag: Flag| matches!(flag, Flag::Ok | Flag::Low | Flag::High);
-    for node in &screened.nodes {
-        count(node.low.case.filter(|_| judged(node.low.flag)), |limits| {
-            limits.pressure_low_m.is_default
-        });
-        count(node.high.case.filter(|_| judged(node.high.flag)), |limits| {
-            limits.pressure_high_m.is_default
-        });
-    }
-    for part in &screened.parts {
-        count(part.velocity.case.filter(|_| judged(part.velocity.flag)), |limits| {
-            limits.velocity_high_m_per_s.is_default
-        });
-        count(part.gradient.case.filter(|_| judged(part.gradient.flag)), |limits| {
-            limits.gradient_high.is_default
-        });
-    }
-    for customer in &screened.customers {
-        count(customer.case.filter(|_| judged(customer.flag)), |limits| {
-            limits.pressure_low_m.is_default
-        });
-    }
-    (made, on_default)
+    let nodes = screened.nodes.iter().flat_map(|node| [&node.low, &node.high]);
+    let parts = screened.parts.iter().flat_map(|part| [&part.velocity, &part.gradient]);
+    let judged = nodes
+        .chain(parts)
+        .chain(&screened.customers)
+        .filter(|verdict| verdict.is_judged());
+    let fire_judged = |verdict: &&HydrantVerdict| matches!(verdict.flag, Flag::Ok | Flag::Short);
+    let hydrants = screened
+        .fire
+        .verdicts()
+        .into_iter()
+        .flatten()
+        .filter(fire_judged)
+        .count();
+    let is_default = |limit: &Limit| limit.is_default;
+    let fire_on_default = calculation
+        .fire
+        .as_ref()
+        .is_some_and(|fire| is_default(&fire.residual_m) || fire.keep_elsewhere_m.as_ref().is_some_and(is_default));
+    let on_default = judged.clone().filter(|verdict| verdict.on_default).count();
+    (
+        judged.count() + hydrants,
+        on_default + if fire_on_default { hydrants } else { 0 },
+    )
 }

@@ -4,8 +4,9 @@ use serde_json::{Map, Value, json};
 
 use super::facts::{self, CAUTIONS};
 use super::{Report, Words, plural};
+use crate::assets::{Fillers, UnitUsed};
 use crate::finding::{About, FeatureRef};
-use crate::screening::{FireRun, Flag};
+use crate::screening::{FireRun, Flag, Limit};
 use crate::units::UnitSystem;
 
 /// The number of the shape; it rises when a member changes its meaning.
@@ -27,6 +28,7 @@ pub(super) fn summary(report: &Report<'_>) -> Value {
     all.insert("units".into(), json!(units));
     all.insert("inputs".into(), inputs(report));
     all.insert("settings".into(), settings(report));
+    all.insert("columns".into(), columns(report));
     all.insert("topology".into(), topology(report));
     all.insert("findings".into(), findings(report));
     if report.inputs.calculation.is_some() {
@@ -58,6 +60,25 @@ fn inputs(report: &Report<'_>) -> Value {
 fn settings(report: &Report<'_>) -> Value {
     let one = |setting: &super::UsedSetting| json!({ "key": setting.key, "value": setting.value, "from": if setting.is_default { "default" } else { "study" } });
     report.inputs.settings.iter().map(one).collect()
+}
+
+/// The unit that each column was read in and how that is known, and fillers that stand for "not known".
+fn columns(report: &Report<'_>) -> Value {
+    let layer = |index: u16| &report.inputs.set.layers[index as usize].name;
+    let unit = |used: &UnitUsed| {
+        json!({
+            "layer": layer(used.layer),
+            "key": used.key,
+            "column": used.column,
+            "unit": used.unit.name,
+            "from": used.from.words(),
+        })
+    };
+    let filler = |found: &Fillers| json!({ "layer": layer(found.layer), "key": found.key, "filler": found.filler, "rows": found.count });
+    json!({
+        "units": report.inputs.reading.units.iter().map(unit).collect::<Vec<_>>(),
+        "fillers": report.inputs.reading.fillers.iter().map(filler).collect::<Vec<_>>(),
+    })
 }
 
 fn topology(report: &Report<'_>) -> Value {
@@ -132,6 +153,10 @@ fn coverage(report: &Report<'_>) -> Value {
     })
 }
 
+fn limit(limit: &Limit) -> Value {
+    json!({ "value": limit.value, "from": limit.from })
+}
+
 fn cases(report: &Report<'_>) -> Value {
     let all = facts::all_cases(report).into_iter();
     all.map(|solved| {
@@ -139,7 +164,6 @@ fn cases(report: &Report<'_>) -> Value {
             Ok(state) => (true, state.residuals, state.steps),
             Err(trouble) => (false, trouble.residuals, trouble.steps),
         };
-        let limit = |limit: &crate::screening::Limit| json!({ "value": limit.value, "from": limit.from });
         json!({
             "name": solved.case.name,
             "proved": proved,
@@ -192,8 +216,12 @@ fn fire(report: &Report<'_>) -> Value {
         FireRun::NotRun(why) => json!({ "run": false, "why": why }),
         FireRun::Run(verdicts) => {
             let with = |flag: Flag| facts::hydrants_with(verdicts, flag);
+            let asked = calculation.fire.as_ref();
             json!({
                 "run": true,
+                "case": asked.map(|fire| calculation.cases[fire.case].case.name.as_str()),
+                "residual_m": asked.map(|fire| limit(&fire.residual_m)),
+                "keep_elsewhere_m": asked.and_then(|fire| fire.keep_elsewhere_m.as_ref()).map(limit),
                 "hydrants": verdicts.len(),
                 "ok": with(Flag::Ok),
                 "short": with(Flag::Short),

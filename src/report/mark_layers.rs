@@ -1,13 +1,15 @@
 //! The user's own layers with our columns appended: mains, hydrants and customers, every row and column kept.
 
+use std::ops::Range;
+
 use super::rows::{Entry, Rows};
 use super::{Report, plural};
 use crate::assets::Role;
 use crate::finding::{Error, FeatureRef, Finding};
 use crate::layers::result_columns::{CUSTOMERS, HYDRANTS, MAINS};
 use crate::layers::{OutputDir, Table, write_marked};
-use crate::network::{Friction, Valued};
-use crate::screening::{LimitBy, PartVerdict, Verdict};
+use crate::network::Friction;
+use crate::screening::{Flag, LimitBy, PartVerdict, Verdict};
 
 /// Writes every layer that results go back onto. Renamed columns come back as findings.
 pub(super) fn write(report: &Report<'_>, out: &mut OutputDir<'_>) -> Result<Vec<Finding>, Error> {
@@ -26,7 +28,7 @@ pub(super) fn write(report: &Report<'_>, out: &mut OutputDir<'_>) -> Result<Vec<
     Ok(findings)
 }
 
-/// `mains`, or `mains 2` for the second of several layers of one role.
+/// `mains`, or `mains_2` for the second of several layers of one role.
 fn name(report: &Report<'_>, index: u16) -> String {
     let role = report.inputs.reading.names.role(index).unwrap_or(Role::Main);
     let before = report
@@ -52,7 +54,7 @@ fn by_row(rows: u32, layer: u16, origins: impl Iterator<Item = FeatureRef>) -> V
 
 fn mains(report: &Report<'_>, layer: u16, rows: u32) -> Table {
     let (assets, map) = (report.assets(), report.inputs.map);
-    let mut parts_of: Vec<std::ops::Range<usize>> = vec![0..0; assets.mains.len()];
+    let mut parts_of: Vec<Range<usize>> = vec![0..0; assets.mains.len()];
     for (at, part) in map.parts.iter().enumerate() {
         let range = &mut parts_of[part.main as usize];
         *range = if range.start == range.end {
@@ -106,54 +108,51 @@ fn push_main_without_parts(table: &mut Rows, served: &str) {
     ]);
 }
 
-fn push_main(report: &Report<'_>, table: &mut Rows, main: usize, parts: std::ops::Range<usize>, duplicate: bool) {
+fn push_main(report: &Report<'_>, table: &mut Rows, main: usize, parts: Range<usize>, duplicate: bool) {
     if parts.is_empty() {
         return push_main_without_parts(table, "not drawn");
     }
     let asset = &report.assets().mains[main];
-    let count = Entry::Whole(parts.len() as i64);
+    let [flow, vel, vel_flag, vel_case, grad, grad_flag, grad_case] = results(report, parts.clone());
+    let calculated = report
+        .inputs
+        .calculation
+        .map(|calculation| calculation.network.main_diameter_m[main]);
+    let diameter = calculated.or(asset.diameter_m);
     let (used_c, rough) = friction_entries(asset.friction.value);
-    let c_basis = asset.friction.basis.word().into();
-    let Some(calculation) = report.inputs.calculation else {
-        use Entry::Blank as B;
-        let diameter = asset.diameter_m;
-        let basis = diameter.map(|diameter| diameter.basis.word()).into();
-        let served = if duplicate { "duplicate" } else { "yes" };
-        let diameter = diameter.map(|diameter| diameter.value).into();
-        return table.push([
-            B,
-            B,
-            B,
-            B,
-            B,
-            B,
-            B,
-            diameter,
-            basis,
-            used_c,
-            rough,
-            c_basis,
-            count,
-            served.into(),
-        ]);
-    };
-    let (verdicts, network) = (&calculation.screened.parts, &calculation.network);
-    let worst = |of: fn(&PartVerdict) -> &Verdict| {
-        let value = |part: &usize| of(&verdicts[*part]).value.unwrap_or(f64::NEG_INFINITY);
-        let part = parts
-            .clone()
-            .max_by(|a, b| value(a).total_cmp(&value(b)))
-            .expect("a main with parts");
-        (part, of(&verdicts[part]))
-    };
-    let (fastest, velocity) = worst(|part| &part.velocity);
-    let (_, gradient) = worst(|part| &part.gradient);
-    let is_served = parts.clone().any(|part| network.served[network.parts[part].from.at()]);
-    let Valued {
-        value: diameter_m,
-        basis,
-    } = network.main_diameter_m[main];
     table.push([
+        flow,
+        vel,
+        vel_flag,
+        vel_case,
+        grad,
+        grad_flag,
+        grad_case,
+        diameter.map(|diameter| diameter.value).into(),
+        diameter.map(|diameter| diameter.basis.word()).into(),
+        used_c,
+        rough,
+        asset.friction.basis.word().into(),
+        Entry::Whole(parts.len() as i64),
+        if duplicate {
+            "duplicate".into()
+        } else {
+            served(report, parts)
+        },
+    ]);
+}
+
+/// Flow, velocity and gradient of a main: of its worst part.
+fn results(report: &Report<'_>, parts: Range<usize>) -> [Entry; 7] {
+    use Entry::Blank as B;
+    let Some(calculation) = report.inputs.calculation else {
+        return [B, B, "untested".into(), B, B, "untested".into(), B];
+    };
+    let verdicts = &calculation.screened.parts;
+    let fastest = worst_part(verdicts, parts.clone(), |part| &part.velocity);
+    let velocity = &verdicts[fastest].velocity;
+    let gradient = &verdicts[worst_part(verdicts, parts, |part| &part.gradient)].gradient;
+    [
         verdicts[fastest].flow_m3_per_s.into(),
         velocity.value.into(),
         velocity.flag.word().into(),
@@ -161,19 +160,32 @@ fn push_main(report: &Report<'_>, table: &mut Rows, main: usize, parts: std::ops
         gradient.value.into(),
         gradient.flag.word().into(),
         case_name(report, gradient),
-        diameter_m.into(),
-        basis.word().into(),
-        used_c,
-        rough,
-        c_basis,
-        count,
-        match (duplicate, is_served) {
-            (true, _) => "duplicate",
-            (false, true) => "yes",
-            (false, false) => "unserved",
-        }
-        .into(),
-    ]);
+    ]
+}
+
+/// A part that breaks its limit comes before one that is judged, and that before a stub that is not.
+fn worst_part(verdicts: &[PartVerdict], parts: Range<usize>, of: fn(&PartVerdict) -> &Verdict) -> usize {
+    let rank = |part: &usize| {
+        let verdict = of(&verdicts[*part]);
+        let share = verdict.value.zip(verdict.limit).map(|(value, limit)| value / limit);
+        let size = share.or(verdict.value).unwrap_or(f64::NEG_INFINITY);
+        (verdict.flag == Flag::High, verdict.is_judged(), size)
+    };
+    let by = |a: &usize, b: &usize| {
+        let (a, b) = (rank(a), rank(b));
+        (a.0, a.1).cmp(&(b.0, b.1)).then(a.2.total_cmp(&b.2))
+    };
+    parts.max_by(by).expect("a main with parts")
+}
+
+/// Whether a main hangs together with a source; blank where only the map was asked for and it has none.
+fn served(report: &Report<'_>, mut parts: Range<usize>) -> Entry {
+    let map = report.inputs.map;
+    if report.inputs.calculation.is_none() && !report.fed.contains(&true) {
+        return Entry::Blank;
+    }
+    let is_fed = parts.any(|part| report.fed[map.piece_of_node[map.parts[part].from as usize] as usize]);
+    if is_fed { "yes" } else { "unserved" }.into()
 }
 
 /// A C-factor and a roughness height: one of the two is blank.

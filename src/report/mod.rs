@@ -76,6 +76,10 @@ pub struct Report<'a> {
     labels: Labels,
     /// A place on every feature that has one.
     places: HashMap<FeatureRef, Point>,
+    /// Whether each connected piece has a source.
+    fed: Vec<bool>,
+    /// Every finding, those of writing too once it is done; the most serious first.
+    findings: Vec<Finding>,
 }
 
 impl<'a> Report<'a> {
@@ -83,8 +87,13 @@ impl<'a> Report<'a> {
     pub fn new(inputs: Inputs<'a>) -> Report<'a> {
         let id_of = |feature: FeatureRef| inputs.reading.names.id(feature).map(str::to_string);
         let labels = Labels::new(&inputs.reading.assets, inputs.map, &id_of);
-        let places = new_layers::places(&inputs.reading.assets);
-        Report { inputs, labels, places }
+        Report {
+            labels,
+            places: new_layers::places(&inputs.reading.assets),
+            fed: fed_pieces(&inputs),
+            findings: inputs.findings.to_vec(),
+            inputs,
+        }
     }
 
     /// The summary that a planning engineer would paste into a memo. `files` are those written, if any were.
@@ -97,11 +106,12 @@ impl<'a> Report<'a> {
         json::summary(self)
     }
 
-    /// Writes every layer there is data for and `summary.json` into `folder`, all or nothing.
+    /// Writes every layer there is data for and `summary.json` into `folder`, all or nothing. What is noticed on the way
+    /// (a column that had to be renamed) joins the report's findings.
     ///
     /// # Errors
     /// A file that cannot be written, an input that changed since it was read, or a folder that holds something else.
-    pub fn write(&self, folder: &Path) -> Result<Written, Error> {
+    pub fn write(&mut self, folder: &Path) -> Result<Written, Error> {
         self.write_to(folder, &Disk)
     }
 
@@ -109,7 +119,7 @@ impl<'a> Report<'a> {
     ///
     /// # Errors
     /// As [`Report::write`].
-    pub fn write_to(&self, folder: &Path, store: &dyn Store) -> Result<Written, Error> {
+    pub fn write_to(&mut self, folder: &Path, store: &dyn Store) -> Result<Written, Error> {
         let inputs: Vec<PathBuf> = self
             .inputs
             .set
@@ -118,10 +128,10 @@ impl<'a> Report<'a> {
             .map(|layer| layer.source.path.clone())
             .collect();
         let mut out = OutputDir::open_in(folder, &inputs, store)?;
-        let mut findings = mark_layers::write(self, &mut out)?;
-        findings.extend(self.inputs.findings.iter().cloned());
-        crate::screening::sort(&mut findings);
-        new_layers::write(self, &mut out, &findings)?;
+        let noticed = mark_layers::write(self, &mut out)?;
+        self.findings.extend(noticed.iter().cloned());
+        crate::screening::sort(&mut self.findings);
+        new_layers::write(self, &mut out)?;
         let mut json = self.summary_json();
         json["files"] = out.files().iter().map(String::as_str).chain([SUMMARY]).collect();
         let text = serde_json::to_string_pretty(&json).expect("a JSON value can be printed");
@@ -131,6 +141,7 @@ impl<'a> Report<'a> {
         Ok(Written {
             folder: folder.to_path_buf(),
             files,
+            noticed,
         })
     }
 
@@ -171,4 +182,17 @@ pub struct Written {
     pub folder: PathBuf,
     /// The files in it, by name, in the order they were written.
     pub files: Vec<String>,
+    /// What was noticed while writing.
+    pub noticed: Vec<Finding>,
+}
+
+/// Whether each connected piece has a node of known head.
+fn fed_pieces(inputs: &Inputs<'_>) -> Vec<bool> {
+    let mut fed = vec![false; inputs.map.piece_length_m.len()];
+    let points = inputs.reading.assets.nodes.iter().zip(&inputs.map.node_of_point);
+    for (_, node) in points.filter(|(point, _)| point.head_m.is_some()) {
+        node.iter()
+            .for_each(|node| fed[inputs.map.piece_of_node[*node as usize] as usize] = true);
+    }
+    fed
 }

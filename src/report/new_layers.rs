@@ -17,7 +17,7 @@ use crate::topology::{JoinKind, ValvePlace};
 use crate::units::Unit;
 
 /// Writes every layer there is data for.
-pub(super) fn write(report: &Report<'_>, out: &mut OutputDir<'_>, findings: &[Finding]) -> Result<(), Error> {
+pub(super) fn write(report: &Report<'_>, out: &mut OutputDir<'_>) -> Result<(), Error> {
     let format = report.inputs.format;
     let crs = output_crs(&report.inputs.set.layers[0], format)?;
     let mut layer = |name: &str, geometry: Geometry, table: Table| {
@@ -51,16 +51,13 @@ pub(super) fn write(report: &Report<'_>, out: &mut OutputDir<'_>, findings: &[Fi
         joins_table(report, &joins),
     )?;
     let shut = shut_valves(report);
-    if let Some(calculation) = report.inputs.calculation.filter(|_| !shut.is_empty()) {
+    if !shut.is_empty() {
         let places = shut
             .iter()
             .map(|(_, node_a, _)| Some(report.inputs.map.nodes[*node_a as usize].at));
-        layer(
-            "devices",
-            points(report, &crs, places)?,
-            devices(report, &calculation.cases, &shut),
-        )?;
+        layer("devices", points(report, &crs, places)?, devices(report, &shut))?;
     }
+    let findings = &report.findings;
     let places = findings.iter().map(|finding| place_of(report, finding));
     layer(
         "findings",
@@ -177,7 +174,7 @@ fn nodes(report: &Report<'_>) -> Table {
             elevation.map(|elevation| elevation.value).into(),
             elevation.map(|elevation| elevation.basis.word()).into(),
             verdict.head_m.into(),
-            verdict.low.value.into(),
+            verdict.lowest_m.into(),
             calculation.map(|_| verdict.low.flag.word()).into(),
             case_name(report, &verdict.low),
             verdict.low.margin_above().into(),
@@ -230,8 +227,12 @@ fn shut_valves(report: &Report<'_>) -> Vec<(usize, u32, u32)> {
     report.inputs.map.valves.iter().enumerate().filter_map(cut).collect()
 }
 
-fn devices(report: &Report<'_>, cases: &[Solved], shut: &[(usize, u32, u32)]) -> Table {
-    let state = cases.first().and_then(|solved| solved.outcome.as_ref().ok());
+fn devices(report: &Report<'_>, shut: &[(usize, u32, u32)]) -> Table {
+    let first = report
+        .inputs
+        .calculation
+        .and_then(|calculation| calculation.cases.first());
+    let state = first.and_then(|solved| solved.outcome.as_ref().ok());
     let mut table = Rows::new(DEVICES, report.inputs.units, shut.len());
     for (valve, node_a, node_b) in shut {
         let valve = &report.assets().valves[*valve];
@@ -247,7 +248,7 @@ fn devices(report: &Report<'_>, cases: &[Solved], shut: &[(usize, u32, u32)]) ->
             report.labels.node(*node_a as usize).into(),
             report.labels.node(*node_b as usize).into(),
             "closed".into(),
-            0.0.into(),
+            state.map(|_| 0.0).into(),
             head(*node_a),
             head(*node_b),
         ]);

@@ -5,10 +5,10 @@ use std::fmt::Write;
 use super::facts::{self, CAUTIONS, OfCode};
 use super::words::{counted, thousands};
 use super::{Report, Words, Written, plural};
-use crate::assets::Role;
+use crate::assets::{Role, UnitFrom};
 use crate::calculation::Calculation;
 use crate::finding::{About, Code, FeatureRef};
-use crate::screening::{FireRun, Flag, HydrantVerdict};
+use crate::screening::{FireRun, Flag, HydrantVerdict, Limit};
 use crate::topology::JoinKind;
 use crate::units::Quantity;
 
@@ -44,9 +44,28 @@ fn tell(out: &mut String, report: &Report<'_>, words: &Words<'_>, written: Optio
     CAUTIONS.iter().try_for_each(|caution| writeln!(out, "  {caution}"))?;
     if let Some(written) = written {
         writeln!(out, "\nWritten to {}", written.folder.display())?;
-        writeln!(out, "  {}", written.files.join(", "))?;
+        writeln!(out, "  {}", layers_written(&written.files))?;
     }
     Ok(())
+}
+
+/// The layers in a list of files, each with what its main file ends in.
+fn layers_written(files: &[String]) -> String {
+    let of_a_layer = |file: &&String| {
+        [".geojson", ".shp", ".json"]
+            .iter()
+            .any(|ending| file.ends_with(ending))
+    };
+    let is_table = |file: &&String| {
+        file.strip_suffix(".dbf")
+            .is_some_and(|stem| !files.iter().any(|other| *other == format!("{stem}.shp")))
+    };
+    let shown: Vec<&str> = files
+        .iter()
+        .filter(|file| of_a_layer(file) || is_table(file))
+        .map(String::as_str)
+        .collect();
+    shown.join(", ")
 }
 
 /// The first line: how much of the map the rest speaks of.
@@ -101,9 +120,36 @@ fn read(out: &mut String, report: &Report<'_>) -> std::fmt::Result {
             layer.crs.name
         )?;
     }
+    inferred(out, report)?;
     let left_out = report.assets().left_out.len();
     if left_out > 0 {
         writeln!(out, "  {:>8} mains left out by rules of the study", thousands(left_out))?;
+    }
+    Ok(())
+}
+
+/// Units that the study does not state, and fillers that stand for "not known".
+fn inferred(out: &mut String, report: &Report<'_>) -> std::fmt::Result {
+    let reading = report.inputs.reading;
+    let layer = |index: u16| &report.inputs.set.layers[index as usize].name;
+    for used in reading.units.iter().filter(|used| used.from != UnitFrom::Study) {
+        let (column, layer) = (&used.column, layer(used.layer));
+        writeln!(
+            out,
+            "           {layer}: {column} is read in {}, {}",
+            used.unit.name,
+            used.from.words()
+        )?;
+    }
+    // Blanks are no news; all of it is in `summary.json`.
+    for found in reading.fillers.iter().filter(|found| !found.filler.starts_with('(')) {
+        let (rows, layer) = (counted(found.count as usize, "row"), layer(found.layer));
+        writeln!(
+            out,
+            "           {layer}: {} in {rows} is read as no {}",
+            found.filler,
+            found.key.replace('_', " ")
+        )?;
     }
     Ok(())
 }
@@ -257,6 +303,15 @@ fn fire(out: &mut String, calculation: &Calculation, report: &Report<'_>, words:
         with(Flag::Untested),
         with(Flag::NotJudged)
     )?;
+    if let Some(fire) = &calculation.fire {
+        let pressure = |limit: &Limit| format!("{} ({})", words.number(limit.value, Quantity::Pressure), limit.from);
+        write!(out, "  in the case `{}`", calculation.cases[fire.case].case.name)?;
+        write!(out, ", with a residual of {}", pressure(&fire.residual_m))?;
+        match &fire.keep_elsewhere_m {
+            Some(limit) => writeln!(out, " and {} kept wherever customers draw", pressure(limit))?,
+            None => writeln!(out)?,
+        }
+    }
     let mut short: Vec<(usize, &HydrantVerdict)> = verdicts
         .iter()
         .enumerate()

@@ -2,6 +2,7 @@
 
 use super::Subject;
 use crate::finding::{Code, Finding, Sentence};
+use crate::network::Part;
 use crate::units::Quantity;
 
 /// Why a place could not be tested.
@@ -49,6 +50,11 @@ pub struct Coverage {
 }
 
 impl Coverage {
+    /// Whether either end of a part is untested.
+    pub fn is_untested(&self, part: &Part) -> bool {
+        self.reason[part.from.at()].is_some() || self.reason[part.to.at()].is_some()
+    }
+
     /// Share of the length that is untested, 0 to 1; 1 where there is no length at all.
     pub fn untested_share(&self) -> f64 {
         if self.length_m > 0.0 {
@@ -90,6 +96,36 @@ pub(super) fn coverage(subject: &Subject<'_>) -> Coverage {
         length_m: network.parts.iter().map(|part| part.length_m).sum(),
         untested_m,
     }
+}
+
+/// One finding a connected piece that is served but has no elevation or no demand to go by. (That a piece has no source
+/// is said by the topology, and that there is nothing at all to go by when the network is assembled.)
+pub(super) fn untested_pieces(subject: &Subject<'_>, coverage: &Coverage) -> Vec<Finding> {
+    let mut why: Vec<Option<(Untested, usize)>> = vec![None; subject.map.piece_length_m.len()];
+    for (at, part) in subject.map.parts.iter().enumerate() {
+        let piece = subject.map.piece_of_node[part.from as usize] as usize;
+        why[piece] = why[piece].or(coverage.reason[part.from as usize].map(|reason| (reason, at)));
+    }
+    let nobody_draws = subject
+        .network
+        .draws
+        .iter()
+        .all(|draw| !subject.network.served[draw.node.at()]);
+    let said = why
+        .iter()
+        .zip(&subject.map.piece_length_m)
+        .filter_map(|(why, length_m)| {
+            let (code, words) = match why.as_ref()?.0 {
+                Untested::NoElevation => (Code::ElevationUnknown, " has no known elevation"),
+                Untested::NoDemand if !nobody_draws => (Code::NoDemand, " has a source, but nobody draws on it"),
+                _ => return None,
+            };
+            let main = subject.assets.mains[subject.map.parts[why.as_ref()?.1].main as usize].origin;
+            let message = Sentence::from("a piece of ").number(*length_m, Quantity::Length);
+            let message = message.text(" around ").feature(main).text(words);
+            Some(Finding::new(code, message).on(main))
+        });
+    said.collect()
 }
 
 /// One finding a case that did not settle, with the worst three parts.

@@ -8,10 +8,10 @@ use std::sync::atomic::{AtomicU64, Ordering};
 
 use rayon::prelude::*;
 
-use super::coverage::Coverage;
+use super::coverage::{Coverage, Untested};
 use super::{Fire, Flag, Solved, Subject};
 use crate::finding::{Code, Error, Finding, Sentence};
-use crate::hydraulics::{self, Kept, Solver, State};
+use crate::hydraulics::{self, Kept, NotSettled, Solver, State};
 use crate::network::{Condition, NodeIx};
 use crate::units::Quantity;
 use crate::watch::{Watch, step};
@@ -72,13 +72,13 @@ impl JudgedAt {
 /// What was found at a hydrant.
 #[derive(Clone, Debug, PartialEq, Default)]
 pub struct HydrantVerdict {
-    /// `ok`, `short`, `not judged` (no needed flow), `unserved` or `untested`.
+    /// `ok`, `short`, `not judged` (no needed flow), `unserved` or `untested` (also where a flow did not settle).
     pub flag: Flag,
     /// Pressure with no hydrant open, m.
     pub static_m: Option<f64>,
     /// Needed flow, m3/s.
     pub needed_m3_per_s: Option<f64>,
-    /// Flow at its own residual limit, m3/s.
+    /// Flow at its own residual limit, m3/s; `None` also where nothing limits it but a source of no stated greatest flow.
     pub available_m3_per_s: Option<f64>,
     /// Flow at which the first limit anywhere is met, m3/s; `None` unless the study asks for it.
     pub safe_m3_per_s: Option<f64>,
@@ -88,6 +88,8 @@ pub struct HydrantVerdict {
     pub limit_by: Option<LimitBy>,
     /// Where it was judged.
     pub judged_at: Option<JudgedAt>,
+    /// Whether one of its flows did not settle: nothing is said of it then.
+    pub unsolved: bool,
 }
 
 impl HydrantVerdict {
@@ -150,7 +152,7 @@ pub(super) fn check(
     };
     findings.extend(not_a_peak(subject, solved));
     let (kept, already_low) = kept_places(subject, fire, base);
-    findings.extend(already_low_finding(subject, fire, &already_low));
+    findings.extend(already_low_finding(subject, fire, base, &already_low));
     let run = Run {
         subject,
         solver,
@@ -172,6 +174,11 @@ pub(super) fn check(
         })
         .collect();
     let verdicts = verdicts?;
+    findings.extend(
+        (0..verdicts.len())
+            .filter(|at| verdicts[*at].unsolved)
+            .map(|at| run.unsolved_finding(at)),
+    );
     findings.extend(
         verdicts
             .iter()
@@ -220,34 +227,35 @@ fn not_a_peak(subject: &Subject<'_>, solved: &Solved) -> Option<Finding> {
 
 /// Nodes whose pressure is to be kept while a hydrant flows, and those already below with no fire.
 ///
-/// A node is kept at the ground of the highest customer that draws there, where customers' elevations are known.
+/// A node is kept at the highest ground there: its own and that of the customers who draw from it. How high the taps are
+/// does not count: in a fire the limit is meant at the ground.
 fn kept_places(subject: &Subject<'_>, fire: &Fire, base: &State) -> (Vec<Kept>, Vec<usize>) {
     let Some(limit) = &fire.keep_elsewhere_m else {
         return (Vec::new(), Vec::new());
     };
     let mut ground_m: Vec<Option<f64>> = vec![None; subject.map.nodes.len()];
-    let mut raise = |node: usize, elevation_m: Option<f64>| {
-        ground_m[node] = match (ground_m[node], elevation_m) {
-            (Some(old), Some(new)) => Some(f64::max(old, new)),
-            (old, new) => old.or(new),
-        };
-    };
-    for draw in subject
-        .network
-        .draws
-        .iter()
-        .filter(|draw| subject.network.served[draw.node.at()])
-    {
-        raise(
-            draw.node.at(),
-            subject.network.elevation_m[draw.node.at()].map(|elevation| elevation.value),
-        );
-    }
-    for (customer, tap) in subject.assets.customers.iter().zip(&subject.map.customers) {
-        if let Some(tap) = tap.filter(|tap| customer.demand_m3_per_s > 0.0 && subject.network.served[tap.node as usize])
+    let mut raise = |node: usize, customer_m: Option<f64>| {
+        let node_m = subject.network.elevation_m[node].map(|elevation| elevation.value);
+        // `None` is below every elevation.
+        for elevation_m in [node_m, customer_m]
+            .into_iter()
+            .filter(|_| subject.network.served[node])
         {
-            raise(tap.node as usize, customer.elevation_m);
+            ground_m[node] = if elevation_m > ground_m[node] {
+                elevation_m
+            } else {
+                ground_m[node]
+            };
         }
+    };
+    let points = subject.assets.nodes.iter().zip(&subject.map.node_of_point);
+    for (_, node) in points.filter(|(point, _)| point.demand_m3_per_s > 0.0) {
+        node.iter().for_each(|node| raise(*node as usize, None));
+    }
+    let customers = subject.assets.customers.iter().zip(&subject.map.customers);
+    for (customer, tap) in customers.filter(|(customer, _)| customer.demand_m3_per_s > 0.0) {
+        tap.iter()
+            .for_each(|tap| raise(tap.node as usize, customer.elevation_m));
     }
     let (mut kept, mut already_low) = (Vec::new(), Vec::new());
     for (node, ground_m) in ground_m.iter().enumerate() {
@@ -256,16 +264,14 @@ fn kept_places(subject: &Subject<'_>, fire: &Fire, base: &State) -> (Vec<Kept>, 
         if base.head_m[node] < head_m {
             already_low.push(node);
         } else {
-            kept.push(Kept {
-                node: NodeIx(node as u32),
-                head_m,
-            });
+            let node = NodeIx(node as u32);
+            kept.push(Kept { node, head_m });
         }
     }
     (kept, already_low)
 }
 
-fn already_low_finding(subject: &Subject<'_>, fire: &Fire, already_low: &[usize]) -> Option<Finding> {
+fn already_low_finding(subject: &Subject<'_>, fire: &Fire, base: &State, already_low: &[usize]) -> Option<Finding> {
     let limit = fire.keep_elsewhere_m.as_ref().filter(|_| !already_low.is_empty())?;
     let low: std::collections::HashSet<usize> = already_low.iter().copied().collect();
     let message = format!(
@@ -273,7 +279,14 @@ fn already_low_finding(subject: &Subject<'_>, fire: &Fire, already_low: &[usize]
         already_low.len()
     );
     let mut finding = Finding::new(Code::AlreadyLow, message.into()).limit(limit.value, limit.from.clone());
-    finding.at = already_low.first().map(|node| subject.map.nodes[*node].at);
+    let pressures = already_low
+        .iter()
+        .filter_map(|node| Some((*node, subject.pressure_m(base, *node)?)));
+    if let Some((node, lowest_m)) = pressures.min_by(|a, b| a.1.total_cmp(&b.1)) {
+        finding = finding
+            .at(subject.map.nodes[node].at)
+            .measured(lowest_m, Quantity::Pressure);
+    }
     let customers = subject.assets.customers.iter().zip(&subject.map.customers);
     let named =
         customers.filter_map(|(customer, tap)| low.contains(&(tap.as_ref()?.node as usize)).then_some(customer.origin));
@@ -328,60 +341,75 @@ impl Run<'_> {
         let mut verdict = HydrantVerdict {
             static_m: Some(self.base.head_m[node] - ground_m),
             judged_at: Some(judged_at),
-            at_need_m: needed.and_then(|needed| self.pressure_while_giving(node, needed, ground_m)),
             ..blank
         };
         let own = Kept {
             node: NodeIx(tap.node),
             head_m: ground_m + self.fire.residual_m.value,
         };
-        self.flows(own, &mut verdict);
-        verdict.flag = match (coverage.reason[node], verdict.short_m3_per_s(), verdict.limit_by) {
-            (Some(super::Untested::NotProved | super::Untested::NoSource), _, _) => Flag::Untested,
-            (_, Some(short), _) if short > 0.0 => Flag::Short,
-            (_, Some(_), _) => Flag::Ok,
-            (_, None, Some(_)) => Flag::NotJudged,
-            (_, None, None) => Flag::Untested,
+        let solved = self.flows(own, &mut verdict).is_ok() && self.at_need(node, ground_m, &mut verdict).is_ok();
+        verdict.unsolved = !solved;
+        // The hydrant's own elevation is enough where its main has none.
+        let why = coverage.reason[node].filter(|why| *why != Untested::NoElevation || asset.elevation_m.is_none());
+        let untested = why.is_some();
+        verdict.flag = match (verdict.short_m3_per_s(), verdict.limit_by) {
+            _ if !solved => Flag::Untested,
+            (Some(short), _) if short > 0.0 => Flag::Short,
+            // What a short hydrant lacks it lacks even if nobody draws; that it has enough is not shown by that.
+            _ if untested => Flag::Untested,
+            (Some(_), _) => Flag::Ok,
+            (None, Some(LimitBy::Source)) if needed.is_some() => Flag::Ok,
+            (None, _) => Flag::NotJudged,
         };
         verdict
     }
 
     /// The available flow, and the safe one if it is asked for.
-    fn flows(&self, own: Kept, verdict: &mut HydrantVerdict) {
-        let solve = |kept: &[Kept]| {
-            self.solver
-                .flow_at_held_head(&self.condition, self.base, own, kept)
-                .ok()
-        };
+    fn flows(&self, own: Kept, verdict: &mut HydrantVerdict) -> Result<(), NotSettled> {
+        let solve = |kept: &[Kept]| self.solver.flow_at_held_head(&self.condition, self.base, own, kept);
         let finite = |flow: f64| Some(flow).filter(|flow| flow.is_finite());
-        let Some(alone) = solve(&[]) else { return };
+        let alone = solve(&[])?;
         let alone_flow = alone.flow_m3_per_s;
         verdict.available_m3_per_s = finite(alone_flow);
         verdict.limit_by = Some(limit_by(own.node, &alone.limit));
         if self.fire.keep_elsewhere_m.is_none() {
-            return;
+            return Ok(());
         }
         // Where the flow at the own limit breaks nothing elsewhere it is the safe flow too: no second solve.
         let breaks_nothing = |state: &State| self.kept.iter().all(|kept| state.head_m[kept.node.at()] >= kept.head_m);
-        let first = if alone.state.as_ref().is_none_or(breaks_nothing) {
-            Some(alone)
-        } else {
-            solve(&self.kept)
+        let first = match alone.state.as_ref().is_none_or(breaks_nothing) {
+            true => alone,
+            false => solve(&self.kept)?,
         };
-        let Some(first) = first else { return };
         verdict.safe_m3_per_s = finite(first.flow_m3_per_s);
         verdict.limit_by = Some(match limit_by(own.node, &first.limit) {
             // Its own node, but at a level of a customer who draws there, above the hydrant's own.
             LimitBy::OwnPressure if first.flow_m3_per_s < alone_flow * SAME => LimitBy::Elsewhere(own.node),
             limit => limit,
         });
+        Ok(())
     }
 
-    fn pressure_while_giving(&self, node: usize, needed: f64, ground_m: f64) -> Option<f64> {
+    /// The pressure while it gives the needed flow.
+    fn at_need(&self, node: usize, ground_m: f64, verdict: &mut HydrantVerdict) -> Result<(), NotSettled> {
+        let Some(needed) = verdict.needed_m3_per_s else {
+            return Ok(());
+        };
         let mut condition = self.condition.clone();
         condition.demand_m3_per_s[node] += needed;
-        let state = self.solver.solve(&condition, Some(self.base)).ok()?;
-        Some(state.head_m[node] - ground_m)
+        let state = self.solver.solve(&condition, Some(self.base))?;
+        verdict.at_need_m = Some(state.head_m[node] - ground_m);
+        Ok(())
+    }
+
+    fn unsolved_finding(&self, hydrant: usize) -> Finding {
+        let asset = &self.subject.assets.hydrants[hydrant];
+        let message = Sentence::new()
+            .feature(asset.origin)
+            .text(" has no fire flow: its solution did not settle");
+        let mut finding = Finding::new(Code::CaseNotProved, message).on(asset.origin);
+        finding.at = asset.at;
+        finding
     }
 
     fn short_finding(&self, hydrant: usize, verdict: &HydrantVerdict) -> Option<Finding> {

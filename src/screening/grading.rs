@@ -3,21 +3,28 @@
 //!
 //! - A near miss between a main with a source and one without is serious: everything behind it goes untested if it is real.
 //! - An assumed bore decides the answer where it makes the water lose a metre of head or more: serious. Where the main
-//!   carries next to nothing in every case it is a note.
+//!   carries next to nothing in every case it is a note. The bore that was assumed is said.
+//! - A pressure out of bounds beside an elevation that is doubted is more likely a fault of the map: one step lower, and said.
 //!
 //! All else keeps the severity that its check gave it.
 
+use std::collections::HashMap;
+
 use super::{Screened, Subject};
+use crate::assets::Point;
 use crate::finding::{Code, FeatureRef, Finding, Severity};
+use crate::units::Quantity;
 
 /// Head loss along a main with an assumed bore that makes the assumption serious, m.
 const SERIOUS_LOSS_M: f64 = 1.0;
+/// A pressure this near to a doubted elevation may owe itself to it, m.
+const BESIDE_M: f64 = 150.0;
 /// Velocity below which a main carries next to nothing, m/s.
 const NEXT_TO_NOTHING_M_PER_S: f64 = 0.01;
 
 /// Sets final severities and puts the most serious first.
 pub fn grade(subject: &Subject<'_>, screened: &Screened, findings: &mut [Finding]) {
-    let mains: std::collections::HashMap<FeatureRef, usize> = subject
+    let mains: HashMap<FeatureRef, usize> = subject
         .assets
         .mains
         .iter()
@@ -25,22 +32,60 @@ pub fn grade(subject: &Subject<'_>, screened: &Screened, findings: &mut [Finding
         .map(|(at, main)| (main.origin, at))
         .collect();
     let use_of = MainUse::of(subject, screened);
+    let doubted: Vec<(FeatureRef, Point)> = findings
+        .iter()
+        .filter(|finding| finding.code == Code::ElevationDoubtful)
+        .filter_map(|finding| Some((finding.feature?, finding.at?)))
+        .collect();
     for finding in findings.iter_mut() {
-        let main = finding.feature.and_then(|feature| mains.get(&feature).copied());
-        match (finding.code, main) {
-            (Code::DiameterMissing | Code::DiameterImpossible, Some(main)) => {
-                finding.severity = use_of.severity_of_assumption(main);
-            }
-            (Code::NearMiss, Some(main)) => {
-                let other = finding.others.iter().find_map(|other| mains.get(other).copied());
-                if other.is_some_and(|other| use_of.served[main] != use_of.served[other]) {
+        let named = finding.feature.iter().chain(&finding.others);
+        let named: Vec<usize> = named.filter_map(|feature| mains.get(feature).copied()).collect();
+        match finding.code {
+            Code::DiameterMissing | Code::DiameterImpossible => grade_assumption(subject, &use_of, &named, finding),
+            Code::NearMiss => {
+                if let [main, other, ..] = named[..]
+                    && use_of.served[main] != use_of.served[other]
+                {
                     finding.severity = Severity::Serious;
                 }
             }
+            Code::PressureHigh | Code::PressureLow | Code::CannotBeSupplied => doubt(&doubted, finding),
             _ => {}
         }
     }
     sort(findings);
+}
+
+/// Grades an assumed bore by the main that it matters most for, and says the bore where the finding is about one main.
+fn grade_assumption(subject: &Subject<'_>, use_of: &MainUse, named: &[usize], finding: &mut Finding) {
+    let Some(severity) = named.iter().map(|main| use_of.severity_of_assumption(*main)).max() else {
+        return;
+    };
+    finding.severity = severity;
+    if let [main] = named {
+        let bore_m = subject.network.main_diameter_m[*main].value;
+        let message = std::mem::take(&mut finding.message);
+        finding.message = message.text("; calculated with ").number(bore_m, Quantity::Diameter);
+    }
+}
+
+/// Lowers a pressure finding beside a doubted elevation, and names it.
+fn doubt(doubted: &[(FeatureRef, Point)], finding: &mut Finding) {
+    let Some(at) = finding.at else { return };
+    let near = |(_, place): &&(FeatureRef, Point)| (place[0] - at[0]).hypot(place[1] - at[1]) <= BESIDE_M;
+    let Some((feature, _)) = doubted.iter().find(near) else {
+        return;
+    };
+    finding.severity = match finding.severity {
+        Severity::Serious => Severity::Warning,
+        _ => Severity::Note,
+    };
+    let message = std::mem::take(&mut finding.message);
+    finding.message = message
+        .text("; the elevation of ")
+        .feature(*feature)
+        .text(" beside it is doubtful: look there first");
+    finding.others.push(*feature);
 }
 
 /// Puts the most serious first, then by code, layer and row: the order does not depend on how findings were found.

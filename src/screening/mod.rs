@@ -11,6 +11,7 @@ mod grading;
 mod limits;
 mod pressure_high;
 mod pressure_low;
+mod undelivered;
 mod velocity_high;
 
 pub use coverage::{Coverage, Untested};
@@ -114,23 +115,94 @@ pub struct Verdict {
     pub value: Option<f64>,
     /// The limit, SI; `None` where it was not judged.
     pub limit: Option<f64>,
+    /// Whether the limit is a default of this program and not the user's.
+    pub on_default: bool,
     /// Index of the case (the number of cases for the network at rest).
     pub case: Option<usize>,
 }
 
 impl Verdict {
+    /// A value that must not fall below its limit.
+    fn at_least(value: f64, limit: &Limit, case: usize) -> Verdict {
+        Verdict::held(
+            value,
+            limit,
+            case,
+            if value < limit.value { Flag::Low } else { Flag::Ok },
+        )
+    }
+
+    /// A value that must not rise above its limit.
+    fn at_most(value: f64, limit: &Limit, case: usize) -> Verdict {
+        Verdict::held(
+            value,
+            limit,
+            case,
+            if value > limit.value { Flag::High } else { Flag::Ok },
+        )
+    }
+
+    fn held(value: f64, limit: &Limit, case: usize, flag: Flag) -> Verdict {
+        Verdict {
+            flag,
+            value: Some(value),
+            limit: Some(limit.value),
+            on_default: limit.is_default,
+            case: Some(case),
+        }
+    }
+
     /// How far the value lies on the right side of a lower limit, SI: positive passes.
     pub fn margin_above(&self) -> Option<f64> {
         Some(self.value? - self.limit?)
+    }
+
+    /// Takes the other verdict where its margin above a lower limit is smaller: limits differ from case to case, so the
+    /// lowest value need not be the worst.
+    fn worsen_below(&mut self, other: Verdict) {
+        if self
+            .margin_above()
+            .is_none_or(|margin| other.margin_above() < Some(margin))
+        {
+            *self = other;
+        }
+    }
+
+    /// Takes the other verdict where it is the larger share of its upper limit.
+    fn worsen_above(&mut self, other: Verdict) {
+        let share = |verdict: &Verdict| Some(verdict.value? / verdict.limit?);
+        if share(self).is_none_or(|known| share(&other) > Some(known)) {
+            *self = other;
+        }
+    }
+
+    /// What was not tested is never `ok`, and what nobody draws at is not judged. A limit that is broken stays broken.
+    fn settle(&mut self, untested: bool, judged: bool) {
+        match (self.flag, self.value) {
+            (_, None) => *self = Verdict::default(),
+            (Flag::Ok, _) if untested => self.flag = Flag::Untested,
+            (Flag::Ok | Flag::Low, _) if !judged => self.flag = Flag::NotJudged,
+            _ => {}
+        }
+        if !matches!(self.flag, Flag::Ok | Flag::Low | Flag::High) {
+            self.limit = None;
+        }
+    }
+
+    /// Whether it says that a limit is kept or broken.
+    pub fn is_judged(&self) -> bool {
+        matches!(self.flag, Flag::Ok | Flag::Low | Flag::High)
     }
 }
 
 /// What was found at a node.
 #[derive(Clone, Debug, PartialEq, Default)]
 pub struct NodeVerdict {
-    /// Pressure in the case where it is lowest.
+    /// Pressure in the case where it lies worst against its limit.
     pub low: Verdict,
-    /// Head in that case, m.
+    /// Lowest pressure in any case, m.
+    pub lowest_m: Option<f64>,
+    /// Head in the case of the lowest pressure, m.
     pub head_m: Option<f64>,
     /// Pressure when nobody draws.
     pub high: Verdict,
@@ -139,11 +211,11 @@ pub struct NodeVerdict {
 /// What was found along a part.
 #[derive(Clone, Debug, PartialEq, Default)]
 pub struct PartVerdict {
-    /// Velocity, m/s, in the case where it is highest.
+    /// Velocity, m/s, in the case where it lies worst against its limit.
     pub velocity: Verdict,
     /// Flow in that case, m3/s, positive in the drawn direction.
     pub flow_m3_per_s: Option<f64>,
-    /// Hydraulic gradient, m/m, in the case where it is steepest.
+    /// Hydraulic gradient, m/m, in the case where it lies worst against its limit.
     pub gradient: Verdict,
 }
 
@@ -182,15 +254,19 @@ pub fn screen(
     };
     let findings = &mut screened.findings;
     findings.extend(coverage::not_proved(subject));
+    findings.extend(coverage::untested_pieces(subject, &screened.coverage));
+    let undelivered = undelivered::find(subject, solver);
+    let (nodes, customers) = (&mut screened.nodes, &mut screened.customers);
     findings.extend(pressure_low::check(
         subject,
         &screened.coverage,
-        &mut screened.nodes,
-        &mut screened.customers,
+        &undelivered,
+        nodes,
+        customers,
     ));
-    findings.extend(pressure_high::check(subject, &mut screened.nodes));
-    findings.extend(velocity_high::check(subject, &mut screened.parts));
-    findings.extend(gradient_high::check(subject, &mut screened.parts));
+    findings.extend(pressure_high::check(subject, &screened.coverage, &mut screened.nodes));
+    findings.extend(velocity_high::check(subject, &screened.coverage, &mut screened.parts));
+    findings.extend(gradient_high::check(subject, &screened.coverage, &mut screened.parts));
     screened.fire = fire_flow::check(subject, &screened.coverage, solver, fire, findings, watch)?;
     Ok(screened)
 }

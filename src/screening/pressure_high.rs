@@ -5,27 +5,20 @@
 
 use super::areas::areas;
 use super::pressure_low::feature_at;
-use super::{Flag, NodeVerdict, Subject, Verdict};
+use super::{Coverage, Flag, NodeVerdict, Subject, Verdict};
 use crate::finding::{Code, Finding, Sentence, Severity};
 use crate::units::Quantity;
 
-pub(super) fn check(subject: &Subject<'_>, nodes: &mut [NodeVerdict]) -> Vec<Finding> {
+pub(super) fn check(subject: &Subject<'_>, coverage: &Coverage, nodes: &mut [NodeVerdict]) -> Vec<Finding> {
     let Ok(state) = &subject.at_rest.outcome else {
         return Vec::new();
     };
-    let limit = &subject.at_rest.limits.pressure_high_m;
     for (node, verdict) in nodes.iter_mut().enumerate() {
-        let Some(pressure_m) = subject.pressure_m(state, node) else {
-            continue;
-        };
-        let flag = if pressure_m > limit.value { Flag::High } else { Flag::Ok };
-        let case = Some(subject.cases.len());
-        verdict.high = Verdict {
-            flag,
-            value: Some(pressure_m),
-            limit: Some(limit.value),
-            case,
-        };
+        if let Some(pressure_m) = subject.pressure_m(state, node) {
+            let limit = &subject.at_rest.limits.pressure_high_m;
+            verdict.high = Verdict::at_most(pressure_m, limit, subject.cases.len());
+        }
+        verdict.high.settle(coverage.reason[node].is_some(), true);
     }
     let marked: Vec<bool> = nodes.iter().map(|verdict| verdict.high.flag == Flag::High).collect();
     areas(subject.map, &marked)

@@ -2,29 +2,27 @@
 
 use std::f64::consts::PI;
 
-use super::{Flag, PartVerdict, Subject, Verdict};
+use super::{Coverage, Flag, PartVerdict, Subject, Verdict};
 use crate::finding::{Code, Finding, Sentence};
 use crate::units::Quantity;
 
-pub(super) fn check(subject: &Subject<'_>, parts: &mut [PartVerdict]) -> Vec<Finding> {
+pub(super) fn check(subject: &Subject<'_>, coverage: &Coverage, parts: &mut [PartVerdict]) -> Vec<Finding> {
     for (at, part) in subject.network.parts.iter().enumerate() {
         let area_m2 = PI / 4.0 * part.diameter_m * part.diameter_m;
+        let found = &mut parts[at];
         for (case, solved, state) in subject.proved() {
             let flow = state.flow_m3_per_s[at];
-            let velocity = flow.abs() / area_m2;
-            let found = &mut parts[at];
-            if velocity.is_finite() && found.velocity.value.is_none_or(|old| velocity > old) {
-                let limit = solved.limits.velocity_high_m_per_s.value;
-                let flag = if velocity > limit { Flag::High } else { Flag::Ok };
-                found.velocity = Verdict {
-                    flag,
-                    value: Some(velocity),
-                    limit: Some(limit),
-                    case: Some(case),
-                };
-                found.flow_m3_per_s = Some(flow);
+            if flow.is_finite() {
+                let limit = &solved.limits.velocity_high_m_per_s;
+                found
+                    .velocity
+                    .worsen_above(Verdict::at_most(flow.abs() / area_m2, limit, case));
+                if found.velocity.case == Some(case) {
+                    found.flow_m3_per_s = Some(flow);
+                }
             }
         }
+        found.velocity.settle(coverage.is_untested(part), true);
     }
     worst_part_of_each_main(subject, parts, |part| &part.velocity)
         .into_iter()

@@ -64,8 +64,8 @@ pub fn run(study: &Study, options: &RunOptions, watch: &dyn Watch) -> Result<Out
         Worked::Map(Box::new(map))
     } else {
         let settings = calculation_settings(study, &mut reading)?;
-        let mut calculation = calculation::calculate(&reading.assets, &settings, watch)?;
-        findings.append(&mut calculation.findings);
+        let mut calculation = calculation::calculate(&reading.assets, &settings, findings, watch)?;
+        findings = std::mem::take(&mut calculation.findings);
         Worked::Full(Box::new(calculation))
     };
     screening::sort(&mut findings);
@@ -79,14 +79,11 @@ pub fn run(study: &Study, options: &RunOptions, watch: &dyn Watch) -> Result<Out
 }
 
 impl Outcome {
-    /// Whether every case, and the network at rest, settled.
+    /// Whether every case, the network at rest and every fire flow settled.
     pub fn is_proved(&self) -> bool {
         match &self.worked {
             Worked::Map(_) => true,
-            Worked::Full(calculation) => {
-                let mut solved = calculation.cases.iter().chain([&calculation.at_rest]);
-                solved.all(|solved| solved.outcome.is_ok())
-            }
+            Worked::Full(calculation) => calculation.is_proved(),
         }
     }
 
@@ -122,10 +119,12 @@ impl Outcome {
 /// # Errors
 /// What stops the run, in a sentence; nothing is written then.
 pub fn run_and_write(study: &Study, options: &RunOptions, watch: &dyn Watch) -> Result<(Outcome, Written), Error> {
-    let outcome = run(study, options, watch)?;
+    let mut outcome = run(study, options, watch)?;
     step(watch, "writing", 0, 0)?;
     let folder = options.out.clone().unwrap_or_else(|| study.default_out());
     let written = outcome.report(study, options).write(&folder)?;
+    outcome.findings.extend(written.noticed.iter().cloned());
+    screening::sort(&mut outcome.findings);
     Ok((outcome, written))
 }
 

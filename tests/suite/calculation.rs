@@ -143,7 +143,7 @@ fn fire(keep_elsewhere_m: Option<f64>, needed_lps: Option<f64>) -> Fire {
 }
 
 fn run(assets: &Assets, settings: &Settings) -> Calculation {
-    calculate(assets, settings, &Unwatched).expect("nobody cancels")
+    calculate(assets, settings, Vec::new(), &Unwatched).expect("nobody cancels")
 }
 
 /// The node nearest to a place.
