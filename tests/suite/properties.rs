@@ -167,8 +167,8 @@ fn loops(given: &Given, state: &State) -> Vec<f64> {
 }
 
 /// Newton's method with a dense matrix for all flows and heads at once, started from guesses and damped by halving: slow,
-/// and nothing in common with the solver but the laws.
-fn dense(given: &Given) -> (Vec<f64>, Vec<f64>) {
+/// and nothing in common with the solver but the laws. `None` where it comes to no answer of its own.
+fn dense(given: &Given) -> Option<(Vec<f64>, Vec<f64>)> {
     let laws = given.laws();
     let (parts, nodes) = (&given.network.parts, given.network.served.len());
     let size = parts.len() + nodes;
@@ -213,7 +213,7 @@ fn dense(given: &Given) -> (Vec<f64>, Vec<f64>) {
         }
     }
     let (flow, head) = x.as_slice().split_at(parts.len());
-    (flow.to_vec(), head.to_vec())
+    (equations(&x).0.amax() < 1e-9).then(|| (flow.to_vec(), head.to_vec()))
 }
 
 proptest! {
@@ -312,7 +312,9 @@ proptest! {
     #[test]
     fn a_dense_solve_agrees(given in given(street_main, 12)) {
         let state = given.solve();
-        let (flow, head) = dense(&given);
+        let Some((flow, head)) = dense(&given) else {
+            return Err(TestCaseError::reject("the plain method comes to no answer"));
+        };
         for (at, wanted) in flow.iter().enumerate() {
             let part = &given.network.parts[at];
             if part.from != part.to {
