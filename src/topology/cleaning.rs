@@ -1,5 +1,7 @@
 //! The cleaning of the drawing, as a list of named steps that can be read as the story. One step a file.
 
+use std::collections::HashSet;
+
 use rstar::RTree;
 
 use super::lines::{Hit, Lines, Stretch};
@@ -67,7 +69,7 @@ pub(super) struct Work<'a> {
     /// The mains of several parts.
     pub multiparts: Vec<multipart::Multipart>,
     /// Those whose parts do not all touch.
-    pub apart: Vec<u32>,
+    pub apart: HashSet<u32>,
     /// The lines once they no longer change.
     pub lines: Lines,
     /// Their segments, by place.
@@ -113,7 +115,7 @@ pub(super) fn clean(assets: &Assets, settings: &JoinSettings) -> Checked<PipeMap
         findings: Vec::new(),
         drawn: Vec::new(),
         multiparts: Vec::new(),
-        apart: Vec::new(),
+        apart: HashSet::new(),
         lines: Lines::default(),
         index: RTree::new(),
         marks: Marks::new(assets),

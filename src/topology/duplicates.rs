@@ -9,6 +9,7 @@
 //! one that is tied in better, else the earlier row. When they differ it is the smaller, of two of one size the one whose
 //! zone is that of the mains around its ends, and the finding is serious.
 
+use std::cell::OnceCell;
 use std::collections::{HashMap, HashSet};
 
 use petgraph::unionfind::UnionFind;
@@ -27,12 +28,29 @@ const SHARE_OF_LENGTH: f64 = 0.25;
 
 /// Leaves out all but one of every set of lines that lie on one another. Counts the lines left out.
 pub(super) fn leave_out(work: &mut Work) -> u32 {
-    let ends = Ends::new(&work.drawn);
-    let pairs = pairs(work, &ends);
+    let drawn = std::mem::take(&mut work.drawn);
+    let ends = Ends {
+        drawn: &drawn,
+        counts: OnceCell::new(),
+    };
+    let left_out = find(work, &ends);
+    let mut index = 0;
+    work.drawn = drawn;
+    work.drawn.retain(|_| {
+        index += 1;
+        !left_out.get(index - 1).is_some_and(|out| *out)
+    });
+    left_out.iter().filter(|out| **out).count() as u32
+}
+
+/// Which lines are left out; empty when none is. Says so.
+fn find(work: &mut Work, ends: &Ends) -> Vec<bool> {
+    let drawn = ends.drawn;
+    let pairs = pairs(work, ends);
     if pairs.is_empty() {
-        return 0;
+        return Vec::new();
     }
-    let mut sets: UnionFind<u32> = UnionFind::new(work.drawn.len());
+    let mut sets: UnionFind<u32> = UnionFind::new(drawn.len());
     for &(a, b) in &pairs {
         sets.union(a, b);
     }
@@ -46,80 +64,90 @@ pub(super) fn leave_out(work: &mut Work) -> u32 {
     let mut members: Vec<Vec<u32>> = members.into_values().collect();
     members.iter_mut().for_each(|set| set.sort_unstable());
     members.sort_unstable();
-    let mut left_out = vec![false; work.drawn.len()];
-    let around = ZonesAround::of(work, members.iter().flatten().copied());
+    let mut left_out = vec![false; drawn.len()];
+    let around = Around::of(work, drawn, &members);
     for set in &members {
-        let kept = kept(work, &ends, &around, set);
+        let kept = kept(work, ends, &around, set);
         for &line in set.iter().filter(|&&line| line != kept) {
             left_out[line as usize] = true;
-            say(work, line, kept);
+            say(work, &drawn[line as usize], &drawn[kept as usize]);
         }
     }
-    let mut index = 0;
-    work.drawn.retain(|_| {
-        index += 1;
-        !left_out[index - 1]
-    });
-    left_out.iter().filter(|out| **out).count() as u32
+    // A main of several lines may lie on another with each of them.
+    work.map.same_as.sort_unstable();
+    work.map.same_as.dedup();
+    left_out
 }
 
-/// How many mains of its own zone lie at the ends of each line that has a copy.
-struct ZonesAround(HashMap<u32, usize>);
+/// How the lines that have copies sit among the others.
+#[derive(Clone, Copy, Default)]
+struct Sits {
+    /// How many of its two ends touch another line that is no copy of it.
+    tied_in: usize,
+    /// How many mains of its own zone lie at its ends.
+    own_zone: usize,
+}
 
-impl ZonesAround {
-    fn of(work: &Work, lines: impl Iterator<Item = u32>) -> Self {
-        let zone = |line: u32| work.assets.mains[work.drawn[line as usize].main as usize].zone;
-        let zoned: Vec<u32> = lines.filter(|&line| zone(line).is_some()).collect();
-        if zoned.is_empty() {
-            return ZonesAround(HashMap::new());
-        }
-        let segments = work.drawn.iter().enumerate().flat_map(|(line, drawn)| {
+/// How each line that has a copy sits among the others.
+struct Around(HashMap<u32, Sits>);
+
+impl Around {
+    fn of(work: &Work, drawn: &[CleanLine], sets: &[Vec<u32>]) -> Self {
+        let zone = |line: u32| work.assets.mains[drawn[line as usize].main as usize].zone;
+        let segments = drawn.iter().enumerate().flat_map(|(line, drawn)| {
             let pairs = drawn.vertices.windows(2);
             pairs.map(move |pair| GeomWithData::new(Line::new(pair[0], pair[1]), line as u32))
         });
         let tree = RTree::bulk_load(segments.collect());
-        let reach_m = work.settings.tolerance_m.max(work.settings.touch_m);
-        let alike = |line: u32| {
-            let near = [first(&work.drawn[line as usize]), last(&work.drawn[line as usize])]
-                .into_iter()
-                .flat_map(|end| tree.locate_within_distance(end, reach_m * reach_m))
-                .map(|found| found.data);
-            let of_zone: HashSet<u32> = near.filter(|&other| zone(other) == zone(line)).collect();
-            of_zone.len()
-        };
-        ZonesAround(zoned.into_iter().map(|line| (line, alike(line))).collect())
+        let touch_m = work.settings.touch_m;
+        let reach_m = work.settings.tolerance_m.max(touch_m);
+        let mut around = HashMap::new();
+        for set in sets {
+            for &line in set {
+                let ends = [first(&drawn[line as usize]), last(&drawn[line as usize])];
+                let near = |end: Point, within_m: f64| {
+                    let found = tree.locate_within_distance(end, within_m * within_m);
+                    found.map(|found| found.data)
+                };
+                let tied_in = |end: &Point| near(*end, touch_m).any(|other| !set.contains(&other));
+                let of_zone: HashSet<u32> = ends
+                    .into_iter()
+                    .flat_map(|end| near(end, reach_m))
+                    .filter(|&other| zone(line).is_some() && zone(other) == zone(line))
+                    .collect();
+                let sits = Sits {
+                    tied_in: ends.iter().filter(|end| tied_in(end)).count(),
+                    own_zone: of_zone.len(),
+                };
+                around.insert(line, sits);
+            }
+        }
+        Around(around)
     }
 
-    fn alike(&self, line: u32) -> usize {
-        self.0.get(&line).copied().unwrap_or(0)
+    fn sits(&self, line: u32) -> Sits {
+        self.0.get(&line).copied().unwrap_or_default()
     }
 }
 
 /// How many lines end at each place.
-struct Ends(HashMap<[u64; 2], u32>);
+struct Ends<'a> {
+    drawn: &'a [CleanLine],
+    /// Counted when first asked for: most maps have few copies to ask about.
+    counts: OnceCell<HashMap<[u64; 2], u32>>,
+}
 
-impl Ends {
-    fn new(drawn: &[CleanLine]) -> Self {
-        let mut ends = HashMap::with_capacity(drawn.len() * 2);
-        for line in drawn {
-            for end in [first(line), last(line)] {
-                *ends.entry(bits(end)).or_insert(0) += 1;
-            }
-        }
-        Ends(ends)
-    }
-
+impl Ends<'_> {
     /// Whether no other line ends at this end of a line.
     fn loose(&self, end: Point) -> bool {
-        self.0.get(&bits(end)).is_none_or(|&count| count <= 1)
-    }
-
-    /// How well the two ends of a line are tied in.
-    fn tied_in(&self, line: &CleanLine) -> usize {
-        [first(line), last(line)]
-            .into_iter()
-            .filter(|&end| !self.loose(end))
-            .count()
+        let counts = self.counts.get_or_init(|| {
+            let mut counts = HashMap::with_capacity(self.drawn.len() * 2);
+            for end in self.drawn.iter().flat_map(|line| [first(line), last(line)]) {
+                *counts.entry(bits(end)).or_insert(0) += 1;
+            }
+            counts
+        });
+        counts.get(&bits(end)).is_none_or(|&count| count <= 1)
     }
 }
 
@@ -137,18 +165,19 @@ fn last(line: &CleanLine) -> Point {
 
 /// Pairs of lines that lie on one another. Copies have the middles between their ends near each other.
 fn pairs(work: &Work, ends: &Ends) -> Vec<(u32, u32)> {
+    let drawn = ends.drawn;
     let reach_m = work.settings.tolerance_m.max(work.settings.touch_m);
     let middle = |line: &CleanLine| between(first(line), last(line), 0.5);
-    let points = work.drawn.iter().enumerate();
+    let points = drawn.iter().enumerate();
     let tree = RTree::bulk_load(
         points
             .map(|(index, line)| GeomWithData::new(middle(line), index as u32))
             .collect::<Vec<_>>(),
     );
     let mut pairs = Vec::new();
-    for (a, line) in work.drawn.iter().enumerate() {
+    for (a, line) in drawn.iter().enumerate() {
         for found in tree.locate_within_distance(middle(line), reach_m * reach_m) {
-            if found.data > a as u32 && alike(work, ends, line, &work.drawn[found.data as usize]) {
+            if found.data > a as u32 && alike(work, ends, line, &drawn[found.data as usize]) {
                 pairs.push((a as u32, found.data));
             }
         }
@@ -180,17 +209,24 @@ fn lies_on(line: &CleanLine, other: &CleanLine, within_m: f64) -> bool {
 }
 
 /// Which of a set is calculated.
-fn kept(work: &Work, ends: &Ends, around: &ZonesAround, set: &[u32]) -> u32 {
-    let main = |line: u32| &work.assets.mains[work.drawn[line as usize].main as usize];
+fn kept(work: &Work, ends: &Ends, around: &Around, set: &[u32]) -> u32 {
+    let main = |line: u32| &work.assets.mains[ends.drawn[line as usize].main as usize];
     let zone = |line: u32| main(line).zone.and_then(|zone| work.assets.zones.get(zone as usize));
     let by = |&a: &u32, &b: &u32| {
         let diameter = |line: u32| main(line).diameter_m.map_or(f64::INFINITY, |d| d.value);
-        let tied_in = |line: u32| ends.tied_in(&work.drawn[line as usize]);
+        let place = |line: u32| {
+            let (a, b) = (first(&ends.drawn[line as usize]), last(&ends.drawn[line as usize]));
+            if (a[0], a[1]) <= (b[0], b[1]) { a } else { b }
+        };
+        let (p, q) = (place(a), place(b));
+        let (sits_a, sits_b) = (around.sits(a), around.sits(b));
         (diameter(a).total_cmp(&diameter(b)))
-            .then(tied_in(b).cmp(&tied_in(a)))
-            .then(around.alike(b).cmp(&around.alike(a)))
+            .then(sits_b.tied_in.cmp(&sits_a.tied_in))
+            .then(sits_b.own_zone.cmp(&sits_a.own_zone))
             .then(main(b).year.cmp(&main(a).year))
             .then(zone(b).cmp(&zone(a)))
+            .then(p[0].total_cmp(&q[0]))
+            .then(p[1].total_cmp(&q[1]))
             .then(a.cmp(&b))
     };
     set.iter().copied().min_by(by).expect("a set has members")
@@ -212,10 +248,9 @@ fn differ_in(a: &Main, b: &Main) -> Vec<&'static str> {
     what
 }
 
-fn say(work: &mut Work, left_out: u32, kept: u32) {
-    let line = &work.drawn[left_out as usize];
+fn say(work: &mut Work, line: &CleanLine, kept: &CleanLine) {
     let at = between(line.vertices[0], line.vertices[1], 0.5);
-    let (dropped, kept) = (line.main, work.drawn[kept as usize].main);
+    let (dropped, kept) = (line.main, kept.main);
     if dropped == kept {
         return;
     }
@@ -236,7 +271,5 @@ fn say(work: &mut Work, left_out: u32, kept: u32) {
     };
     let (on, with) = (a.origin, b.origin);
     work.findings.push(finding.on(on).with(with).at(at));
-    if !work.map.same_as.contains(&(dropped, kept)) {
-        work.map.same_as.push((dropped, kept));
-    }
+    work.map.same_as.push((dropped, kept));
 }

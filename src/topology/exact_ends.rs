@@ -14,10 +14,18 @@ const COMES_BACK_M: f64 = 10.0;
 pub(super) fn gather(work: &mut Work) -> u32 {
     work.lines = Lines::new(std::mem::take(&mut work.drawn));
     work.index = work.lines.index();
-    let mut ends: Vec<(Point, End)> = (0..work.lines.len() as u32 * 2)
+    // Neighbours on the ground get neighbouring numbers: every later step then finds what it needs close together.
+    let mut ends: Vec<(u64, Point, End)> = (0..work.lines.len() as u32 * 2)
         .map(|end| (work.lines.end_at(End(end)), End(end)))
+        .map(|(at, end)| (cell(at), at, end))
         .collect();
-    ends.sort_unstable_by(|(p, e), (q, f)| p[0].total_cmp(&q[0]).then(p[1].total_cmp(&q[1])).then(e.cmp(f)));
+    ends.sort_unstable_by(|(c, p, e), (d, q, f)| {
+        c.cmp(d)
+            .then(p[0].total_cmp(&q[0]))
+            .then(p[1].total_cmp(&q[1]))
+            .then(e.cmp(f))
+    });
+    let ends: Vec<(Point, End)> = ends.into_iter().map(|(_, at, end)| (at, end)).collect();
     let mut spots = Spots {
         spot_of_end: vec![0; ends.len()],
         ..Spots::default()
@@ -30,6 +38,28 @@ pub(super) fn gather(work: &mut Work) -> u32 {
     work.web = Web::new(spots.at, spots.zone, spots.spot_of_end);
     look_round(work);
     shared
+}
+
+/// The number of the square that a place lies in, along a curve that visits squares near each other one after the other
+/// (Morton 1966).
+fn cell(at: Point) -> u64 {
+    const SIDE_M: f64 = 100.0;
+    const MIDDLE: f64 = (1u64 << 31) as f64;
+    let spread = |v: f64| {
+        // To a 32-bit number with its bits spread to every other place; a cast keeps within its bounds.
+        let mut bits = u64::from((v / SIDE_M + MIDDLE) as u32);
+        for (shift, mask) in [
+            (16, 0x0000_FFFF_0000_FFFF),
+            (8, 0x00FF_00FF_00FF_00FF),
+            (4, 0x0F0F_0F0F_0F0F_0F0F),
+            (2, 0x3333_3333_3333_3333),
+            (1, 0x5555_5555_5555_5555),
+        ] {
+            bits = (bits | bits << shift) & mask;
+        }
+        bits
+    };
+    spread(at[0]) | spread(at[1]) << 1
 }
 
 #[derive(Default)]

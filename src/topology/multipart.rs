@@ -135,7 +135,7 @@ pub(super) fn find_apart(work: &mut Work) -> u32 {
             Finding::new(Code::MultipartMerged, message)
         } else {
             apart += 1;
-            work.apart.push(multipart.main);
+            work.apart.insert(multipart.main);
             let (gap_m, at) = gap(work, &lines);
             let message = Sentence::new()
                 .feature(feature)

@@ -79,8 +79,30 @@ pub(super) fn join(work: &mut Work) -> u32 {
             .then(p[1].total_cmp(&q[1]))
             .then(u[0].total_cmp(&v[0]))
             .then(u[1].total_cmp(&v[1]))
+            .then_with(|| ends_there(work, b).cmp(&ends_there(work, a)))
+            .then_with(|| zone_there(work, a).cmp(zone_there(work, b)))
     });
     candidates.iter().filter(|candidate| make(work, candidate)).count() as u32
+}
+
+/// How many ends lie on the spot that would be joined. Where two zones end on one spot, the one with more ends comes first,
+/// as it does for ends that lie there exactly.
+fn ends_there(work: &Work, candidate: &Candidate) -> usize {
+    match candidate.to {
+        Target::Spot(other) => work.web.ends(other).count().max(work.web.ends(candidate.spot).count()),
+        _ => 0,
+    }
+}
+
+/// The name of the zone that a spot would be joined to.
+fn zone_there<'a>(work: &'a Work, candidate: &Candidate) -> &'a str {
+    match candidate.to {
+        Target::Spot(other) => {
+            let zones = [work.web.zone(other), work.web.zone(candidate.spot)];
+            zones.map(|zone| work.zone_name(zone)).into_iter().max().unwrap_or("")
+        }
+        _ => "",
+    }
 }
 
 /// The joins that a spot could make.

@@ -60,10 +60,21 @@ pub(super) fn find(work: &mut Work) -> u32 {
             .then(a.at[1].total_cmp(&b.at[1]))
     });
     let mut said: HashSet<(u32, u32)> = HashSet::new();
+    let mut places: HashSet<[u64; 4]> = HashSet::new();
+    let bits = |a: Point, b: Point| [a[0], a[1], b[0], b[1]].map(f64::to_bits);
     let mut count = 0;
     for miss in misses {
-        let (a, b) = (work.lines.main(miss.end.line()), work.lines.main(miss.other));
-        if said.insert((a.min(b), a.max(b))) {
+        // Two free ends that face each other miss one another: once is enough.
+        if places.contains(&bits(miss.to, miss.at)) {
+            continue;
+        }
+        let main = work.lines.main(miss.end.line());
+        let others = miss.node.map_or(Vec::new(), |node| work.mains_at(node, main));
+        let pairs = others.into_iter().chain([work.lines.main(miss.other)]);
+        let pairs = pairs.map(|other| (main.min(other), main.max(other)));
+        if pairs.clone().all(|pair| !said.contains(&pair)) {
+            places.insert(bits(miss.at, miss.to));
+            said.extend(pairs);
             say(work, miss);
             count += 1;
         }

@@ -2,20 +2,24 @@
 //!
 //! A map without any source is judged by its largest piece: the others are said to be apart from it.
 
+use std::collections::{HashMap, HashSet};
+
 use petgraph::unionfind::UnionFind;
 
 use super::ValvePlace;
 use super::cleaning::Work;
 use super::near_misses::Missed;
 use super::node_points::feeds;
-use crate::assets::MainKind;
+use crate::assets::{MainKind, Point};
 use crate::finding::{Code, FeatureRef, Finding, Sentence, Severity};
 use crate::units::Quantity;
 
 /// A finding names no more mains than this.
 const MOST_NAMED: usize = 50;
 /// The nearest other main is looked for from no more nodes than this.
-const MOST_LOOKED_FROM: usize = 200;
+const MOST_LOOKED_FROM: usize = 50;
+/// From each no more segments are looked at than this.
+const MOST_LOOKED_AT: usize = 300;
 
 /// Finds the pieces, and says which have no source. Counts those.
 pub(super) fn find(work: &mut Work) -> u32 {
@@ -37,11 +41,12 @@ pub(super) fn find(work: &mut Work) -> u32 {
         return 0;
     }
     let mains = mains_of_pieces(work, &fed);
+    let about = About::new(work, &fed);
     let mut count = 0;
     for piece in 0..pieces {
         if !fed[piece] && !mains[piece].is_empty() {
             count += 1;
-            say(work, piece as u32, &mains[piece], no_source);
+            say(work, &about, piece as u32, &mains[piece], no_source);
         }
     }
     count
@@ -125,7 +130,7 @@ impl Work<'_> {
     }
 }
 
-fn say(work: &mut Work, piece: u32, mains: &[u32], no_source: bool) {
+fn say(work: &mut Work, about: &About, piece: u32, mains: &[u32], no_source: bool) {
     let feature = work.feature(mains[0]);
     let what = if no_source {
         "does not hang together with the largest part"
@@ -139,7 +144,7 @@ fn say(work: &mut Work, piece: u32, mains: &[u32], no_source: bool) {
         .feature(feature);
     let mut message = message.text(format!(") {what}"));
     let mut finding = Finding::new(Code::Island, Sentence::new()).on(feature);
-    if let Some((apart_m, line, at)) = nearest_other(work, piece) {
+    if let Some((apart_m, line, at)) = nearest_other(work, about, piece) {
         message = message
             .text("; the nearest other main, ")
             .feature(work.feature_of_line(line));
@@ -152,12 +157,12 @@ fn say(work: &mut Work, piece: u32, mains: &[u32], no_source: bool) {
         .take(MOST_NAMED)
         .map(|&main| work.feature(main))
         .collect();
-    let valves = closed_valves(work, piece);
+    let valves = about.valves.get(&piece).map_or(&[][..], Vec::as_slice);
     if let Some(&valve) = valves.first() {
         message = message.text("; it is shut off by ").feature(valve);
         finding.others.extend(valves.iter().take(MOST_NAMED));
     }
-    if let Some(why) = said_already(work, piece, mains) {
+    if let Some(why) = said_already(work, about, piece, mains) {
         message = message.text(why);
         finding = finding.severity(Severity::Note);
     }
@@ -165,13 +170,63 @@ fn say(work: &mut Work, piece: u32, mains: &[u32], no_source: bool) {
     work.findings.push(finding);
 }
 
+/// What there is to say about pieces, gathered once for all of them.
+struct About {
+    /// Where some of each piece's nodes lie.
+    places: HashMap<u32, Vec<Point>>,
+    /// The closed valves between each piece and others.
+    valves: HashMap<u32, Vec<FeatureRef>>,
+    /// The pieces that a near miss or a bare crossing would join to another.
+    missed: HashSet<u32>,
+}
+
+impl About {
+    fn new(work: &Work, fed: &[bool]) -> Self {
+        let pieces = &work.map.piece_of_node;
+        let mut places: HashMap<u32, Vec<Point>> = HashMap::new();
+        for (node, &piece) in work
+            .map
+            .nodes
+            .iter()
+            .zip(pieces)
+            .filter(|(_, piece)| !fed[**piece as usize])
+        {
+            let of_piece = places.entry(piece).or_default();
+            if of_piece.len() < MOST_LOOKED_FROM {
+                of_piece.push(node.at);
+            }
+        }
+        let mut valves: HashMap<u32, Vec<FeatureRef>> = HashMap::new();
+        for (place, valve) in work.map.valves.iter().zip(&work.assets.valves) {
+            if let Some(ValvePlace::Cut { node_a, node_b, .. }) = place {
+                let (a, b) = (pieces[*node_a as usize], pieces[*node_b as usize]);
+                if a != b {
+                    valves.entry(a).or_default().push(valve.origin);
+                    valves.entry(b).or_default().push(valve.origin);
+                }
+            }
+        }
+        let mut missed = HashSet::new();
+        for &Missed { line, s, other } in &work.missed {
+            if work.cuts.stops[line as usize].is_empty() || work.cuts.stops[other as usize].is_empty() {
+                continue;
+            }
+            let there = work.lines.nearest(other, work.lines.place(line, s)).s;
+            let (a, b) = (work.piece_at(line, s), work.piece_at(other, there));
+            if a != b {
+                missed.extend([a, b]);
+            }
+        }
+        About { places, valves, missed }
+    }
+}
+
 /// The main of another piece that is nearest to a node of this one, where the node lies and how far it is.
-fn nearest_other(work: &Work, piece: u32) -> Option<(f64, u32, [f64; 2])> {
-    let nodes = work.map.nodes.iter().zip(&work.map.piece_of_node);
-    let nodes = nodes.filter(|(_, of)| **of == piece).map(|(node, _)| node.at);
-    let mut best: Option<(f64, u32, [f64; 2])> = None;
-    for at in nodes.take(MOST_LOOKED_FROM) {
-        for (stretch, d_2) in work.index.nearest_neighbor_iter_with_distance_2(at) {
+fn nearest_other(work: &Work, about: &About, piece: u32) -> Option<(f64, u32, Point)> {
+    let mut best: Option<(f64, u32, Point)> = None;
+    for &at in about.places.get(&piece)? {
+        let near = work.index.nearest_neighbor_iter_with_distance_2(at);
+        for (stretch, d_2) in near.take(MOST_LOOKED_AT) {
             if best.is_some_and(|(known, ..)| d_2 >= known * known) {
                 break;
             }
@@ -185,40 +240,13 @@ fn nearest_other(work: &Work, piece: u32) -> Option<(f64, u32, [f64; 2])> {
     best
 }
 
-/// The closed valves between this piece and others.
-fn closed_valves(work: &Work, piece: u32) -> Vec<FeatureRef> {
-    let pieces = &work.map.piece_of_node;
-    let valves = work.map.valves.iter().zip(&work.assets.valves);
-    valves
-        .filter_map(|(place, valve)| match place {
-            Some(ValvePlace::Cut { node_a, node_b, .. }) => {
-                let (a, b) = (pieces[*node_a as usize], pieces[*node_b as usize]);
-                (a != b && (a == piece || b == piece)).then_some(valve.origin)
-            }
-            _ => None,
-        })
-        .collect()
-}
-
 /// Whether another finding says already why this piece is apart: then one warning is enough.
-fn said_already(work: &Work, piece: u32, mains: &[u32]) -> Option<&'static str> {
+fn said_already(work: &Work, about: &About, piece: u32, mains: &[u32]) -> Option<&'static str> {
     let all = |test: &dyn Fn(u32) -> bool| mains.iter().all(|&main| test(main));
     if all(&|main| work.assets.mains[main as usize].kind == MainKind::RawWater) {
         return Some("; it carries raw water, which is not calculated");
     }
-    let missed = work.missed.iter().any(|missed| {
-        let Missed { line, s, other } = *missed;
-        if work.cuts.stops[line as usize].is_empty() || work.cuts.stops[other as usize].is_empty() {
-            return false;
-        }
-        let at = work.lines.place(line, s);
-        let (own, other) = (
-            work.piece_at(line, s),
-            work.piece_at(other, work.lines.nearest(other, at).s),
-        );
-        own != other && (own == piece || other == piece)
-    });
-    if missed {
+    if about.missed.contains(&piece) {
         return Some("; a near miss or a bare crossing of one of them was found, see there");
     }
     let apart = mains.iter().any(|main| work.apart.contains(main));

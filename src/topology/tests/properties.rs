@@ -3,13 +3,13 @@
 use proptest::prelude::*;
 
 use super::draw::{Board, Seen, pairs};
-use super::town::{Chance, build};
+use super::town::{Chance, Plan, build};
 use crate::assets::{Drawing, Point};
 use crate::topology::{Tap, ValvePlace};
 
 /// A town with points of every kind on it.
 fn town(seed: u64) -> Board {
-    let mut board = build(seed, 6, 9, 0.3).board;
+    let mut board = build(Plan::new(seed, 6, 9, 0.3)).board;
     let mut chance = Chance::new(seed + 1);
     for _ in 0..60 {
         let at = [chance.within(-100.0, 500.0), chance.within(-100.0, 600.0)];
@@ -119,7 +119,7 @@ fn shuffled(board: &Board, seed: u64) -> Board {
 }
 
 proptest! {
-    #![proptest_config(ProptestConfig { cases: 24, failure_persistence: None, ..ProptestConfig::default() })]
+    #![proptest_config(ProptestConfig { cases: 24, failure_persistence: None, rng_seed: proptest::test_runner::RngSeed::Fixed(7), ..ProptestConfig::default() })]
 
     #[test]
     fn the_order_of_rows_does_not_matter(seed in 1u64..10_000) {
