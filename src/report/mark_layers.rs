@@ -4,12 +4,12 @@ use std::ops::Range;
 
 use super::rows::{Entry, Rows};
 use super::{Report, plural};
-use crate::assets::Role;
+use crate::assets::{Basis, Role};
 use crate::finding::{Error, FeatureRef, Finding};
 use crate::layers::result_columns::{CUSTOMERS, HYDRANTS, MAINS};
 use crate::layers::{OutputDir, Table, write_marked};
-use crate::network::Friction;
-use crate::screening::{Flag, LimitBy, PartVerdict, Verdict};
+use crate::network::{Friction, NodeIx};
+use crate::screening::{Flag, HydrantVerdict, LimitBy, PartVerdict, Verdict};
 
 /// Writes every layer that results go back onto. Renamed columns come back as findings.
 pub(super) fn write(report: &Report<'_>, out: &mut OutputDir<'_>) -> Result<Vec<Finding>, Error> {
@@ -129,7 +129,10 @@ fn push_main(report: &Report<'_>, table: &mut Rows, main: usize, parts: Range<us
         grad_flag,
         grad_case,
         diameter.map(|diameter| diameter.value).into(),
-        diameter.map(|diameter| diameter.basis.word()).into(),
+        // A copy shows what was calculated for the main it lies on.
+        diameter
+            .map(|diameter| if duplicate { Basis::Joined } else { diameter.basis }.word())
+            .into(),
         used_c,
         rough,
         asset.friction.basis.word().into(),
@@ -232,9 +235,9 @@ fn hydrants(report: &Report<'_>, layer: u16, rows: u32) -> Table {
             continue;
         };
         let limit_at = match verdict.limit_by {
-            Some(LimitBy::Elsewhere(at)) => Some(report.labels.node(at.at())),
+            Some(LimitBy::Elsewhere(at)) => Some(limit_at(report, verdict, at)),
             Some(LimitBy::OwnPressure | LimitBy::AlreadyLow) => {
-                map.hydrants[hydrant].map(|tap| report.labels.node(tap.node as usize))
+                map.hydrants[hydrant].map(|tap| report.labels.node(tap.node as usize).to_string())
             }
             _ => None,
         };
@@ -253,6 +256,15 @@ fn hydrants(report: &Report<'_>, layer: u16, rows: u32) -> Table {
         ]);
     }
     table.into_table()
+}
+
+/// The customer at whose level a limit elsewhere is met, else the node.
+fn limit_at(report: &Report<'_>, verdict: &HydrantVerdict, node: NodeIx) -> String {
+    let customer = |feature: &FeatureRef| report.inputs.reading.names.role(feature.layer) == Some(Role::Customer);
+    match verdict.limit_at.filter(customer) {
+        Some(customer) => report.called(customer),
+        None => report.labels.node(node.at()).to_string(),
+    }
 }
 
 fn customers(report: &Report<'_>, layer: u16, rows: u32) -> Table {

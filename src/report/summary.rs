@@ -326,9 +326,15 @@ fn fire(out: &mut String, calculation: &Calculation, report: &Report<'_>, words:
         let flow = |flow: Option<f64>| flow.map_or("?".into(), |flow| words.number(flow, Quantity::Flow));
         let name = report.called(report.assets().hydrants[*at].origin);
         let limit = verdict.limit_by.map_or("", |limit| limit.word());
+        let place = verdict
+            .limit_at
+            .map_or(String::new(), |place| format!(", {}", report.called(place)));
+        let suspect = verdict.suspect.map_or(String::new(), |([first, other], _)| {
+            format!("; look first at {} and {}", report.called(first), report.called(other))
+        });
         writeln!(
             out,
-            "  {name}: {} of {} (limit: {limit})",
+            "  {name}: {} of {} (limit: {limit}{place}){suspect}",
             flow(verdict.counted_m3_per_s()),
             flow(verdict.needed_m3_per_s)
         )?;

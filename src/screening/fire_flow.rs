@@ -9,15 +9,14 @@ use std::sync::atomic::{AtomicU64, Ordering};
 use rayon::prelude::*;
 
 use super::coverage::{Coverage, Untested};
+use super::kept_places::KeptPlaces;
+use super::suspects::{Suspect, behind, suspects};
 use super::{Fire, Flag, Solved, Subject};
-use crate::finding::{Code, Error, Finding, Sentence};
+use crate::finding::{Code, Error, FeatureRef, Finding, Sentence};
 use crate::hydraulics::{self, Kept, NotSettled, Solver, State};
 use crate::network::{Condition, NodeIx};
 use crate::units::Quantity;
 use crate::watch::{Watch, step};
-
-/// How many features a finding about already low places names.
-const NAMED_AT_MOST: usize = 50;
 
 /// Two flows that agree to this share are one.
 const SAME: f64 = 1.0 - 1e-9;
@@ -86,6 +85,11 @@ pub struct HydrantVerdict {
     pub at_need_m: Option<f64>,
     /// What limits it.
     pub limit_by: Option<LimitBy>,
+    /// The user's feature at whose level a limit elsewhere is met, if one stands there.
+    pub limit_at: Option<FeatureRef>,
+    /// A doubtful connection of the map that likely explains a shortfall: what to look at, what else takes part, and the
+    /// head it holds back, m.
+    pub suspect: Option<([FeatureRef; 2], f64)>,
     /// Where it was judged.
     pub judged_at: Option<JudgedAt>,
     /// Whether one of its flows did not settle: nothing is said of it then.
@@ -151,8 +155,8 @@ pub(super) fn check(
         return Ok(FireRun::NotRun(why));
     };
     findings.extend(not_a_peak(subject, solved));
-    let (kept, already_low) = kept_places(subject, fire, base);
-    findings.extend(already_low_finding(subject, fire, base, &already_low));
+    let places = KeptPlaces::new(subject, fire, base);
+    findings.extend(places.already_low(subject, fire, base));
     let run = Run {
         subject,
         solver,
@@ -162,7 +166,8 @@ pub(super) fn check(
             demand_m3_per_s: solved.demand_m3_per_s.clone(),
             source_head_m: subject.network.condition(&solved.case).source_head_m,
         },
-        kept,
+        places,
+        suspects: suspects(subject),
     };
     let total = subject.assets.hydrants.len() as u64;
     let done = AtomicU64::new(0);
@@ -225,78 +230,6 @@ fn not_a_peak(subject: &Subject<'_>, solved: &Solved) -> Option<Finding> {
     })
 }
 
-/// Nodes whose pressure is to be kept while a hydrant flows, and those already below with no fire.
-///
-/// A node is kept at the highest ground there: its own and that of the customers who draw from it. How high the taps are
-/// does not count: in a fire the limit is meant at the ground.
-fn kept_places(subject: &Subject<'_>, fire: &Fire, base: &State) -> (Vec<Kept>, Vec<usize>) {
-    let Some(limit) = &fire.keep_elsewhere_m else {
-        return (Vec::new(), Vec::new());
-    };
-    let mut ground_m: Vec<Option<f64>> = vec![None; subject.map.nodes.len()];
-    let mut raise = |node: usize, customer_m: Option<f64>| {
-        let node_m = subject.network.elevation_m[node].map(|elevation| elevation.value);
-        // `None` is below every elevation.
-        for elevation_m in [node_m, customer_m]
-            .into_iter()
-            .filter(|_| subject.network.served[node])
-        {
-            ground_m[node] = if elevation_m > ground_m[node] {
-                elevation_m
-            } else {
-                ground_m[node]
-            };
-        }
-    };
-    let points = subject.assets.nodes.iter().zip(&subject.map.node_of_point);
-    for (_, node) in points.filter(|(point, _)| point.demand_m3_per_s > 0.0) {
-        node.iter().for_each(|node| raise(*node as usize, None));
-    }
-    let customers = subject.assets.customers.iter().zip(&subject.map.customers);
-    for (customer, tap) in customers.filter(|(customer, _)| customer.demand_m3_per_s > 0.0) {
-        tap.iter()
-            .for_each(|tap| raise(tap.node as usize, customer.elevation_m));
-    }
-    let (mut kept, mut already_low) = (Vec::new(), Vec::new());
-    for (node, ground_m) in ground_m.iter().enumerate() {
-        let Some(ground_m) = ground_m else { continue };
-        let head_m = ground_m + limit.value;
-        if base.head_m[node] < head_m {
-            already_low.push(node);
-        } else {
-            let node = NodeIx(node as u32);
-            kept.push(Kept { node, head_m });
-        }
-    }
-    (kept, already_low)
-}
-
-fn already_low_finding(subject: &Subject<'_>, fire: &Fire, base: &State, already_low: &[usize]) -> Option<Finding> {
-    let limit = fire.keep_elsewhere_m.as_ref().filter(|_| !already_low.is_empty())?;
-    let low: std::collections::HashSet<usize> = already_low.iter().copied().collect();
-    let message = format!(
-        "{} places that customers draw at are below the limit with no hydrant open and were left out of `safe`",
-        already_low.len()
-    );
-    let mut finding = Finding::new(Code::AlreadyLow, message.into()).limit(limit.value, limit.from.clone());
-    let pressures = already_low
-        .iter()
-        .filter_map(|node| Some((*node, subject.pressure_m(base, *node)?)));
-    if let Some((node, lowest_m)) = pressures.min_by(|a, b| a.1.total_cmp(&b.1)) {
-        finding = finding
-            .at(subject.map.nodes[node].at)
-            .measured(lowest_m, Quantity::Pressure);
-    }
-    let customers = subject.assets.customers.iter().zip(&subject.map.customers);
-    let named =
-        customers.filter_map(|(customer, tap)| low.contains(&(tap.as_ref()?.node as usize)).then_some(customer.origin));
-    let points = already_low
-        .iter()
-        .filter_map(|node| super::pressure_low::feature_at(subject, *node));
-    finding.others = named.chain(points).take(NAMED_AT_MOST).collect();
-    Some(finding)
-}
-
 /// What every hydrant of a run shares.
 struct Run<'a> {
     subject: &'a Subject<'a>,
@@ -304,7 +237,8 @@ struct Run<'a> {
     fire: &'a Fire,
     base: &'a State,
     condition: Condition,
-    kept: Vec<Kept>,
+    places: KeptPlaces,
+    suspects: Vec<Suspect>,
 }
 
 impl Run<'_> {
@@ -369,6 +303,7 @@ impl Run<'_> {
         let solve = |kept: &[Kept]| self.solver.flow_at_held_head(&self.condition, self.base, own, kept);
         let finite = |flow: f64| Some(flow).filter(|flow| flow.is_finite());
         let alone = solve(&[])?;
+        self.suspect(own.node, alone.state.as_ref(), verdict);
         let alone_flow = alone.flow_m3_per_s;
         verdict.available_m3_per_s = finite(alone_flow);
         verdict.limit_by = Some(limit_by(own.node, &alone.limit));
@@ -376,18 +311,34 @@ impl Run<'_> {
             return Ok(());
         }
         // Where the flow at the own limit breaks nothing elsewhere it is the safe flow too: no second solve.
-        let breaks_nothing = |state: &State| self.kept.iter().all(|kept| state.head_m[kept.node.at()] >= kept.head_m);
+        let breaks_nothing = |state: &State| {
+            self.places
+                .kept
+                .iter()
+                .all(|kept| state.head_m[kept.node.at()] >= kept.head_m)
+        };
         let first = match alone.state.as_ref().is_none_or(breaks_nothing) {
             true => alone,
-            false => solve(&self.kept)?,
+            false => solve(&self.places.kept)?,
         };
+        let first_state = first.state;
         verdict.safe_m3_per_s = finite(first.flow_m3_per_s);
         verdict.limit_by = Some(match limit_by(own.node, &first.limit) {
             // Its own node, but at a level of a customer who draws there, above the hydrant's own.
             LimitBy::OwnPressure if first.flow_m3_per_s < alone_flow * SAME => LimitBy::Elsewhere(own.node),
             limit => limit,
         });
+        if let Some(LimitBy::Elsewhere(node)) = verdict.limit_by {
+            verdict.limit_at = self.places.whose(self.subject, node);
+            self.suspect(node, first_state.as_ref(), verdict);
+        }
         Ok(())
+    }
+
+    /// Notes the doubtful connection that most likely explains a low head at a node.
+    fn suspect(&self, node: NodeIx, state: Option<&State>, verdict: &mut HydrantVerdict) {
+        let found = state.and_then(|state| behind(&self.suspects, state, node.at()));
+        verdict.suspect = found.map(|(suspect, step_m)| (suspect.features, step_m));
     }
 
     /// The pressure while it gives the needed flow.
@@ -423,15 +374,21 @@ impl Run<'_> {
             .text(" can give ")
             .number(given, Quantity::Flow);
         message = message.text(" of the needed ").number(given + short, Quantity::Flow);
-        message = match verdict.limit_by {
-            Some(LimitBy::Elsewhere(node)) => match who_draws_at(self.subject, node.at()) {
-                Some(other) => message.text("; pressure at ").feature(other).text(" is the limit"),
-                None => message.text(format!("; pressure at node {} is the limit", node.0 + 1)),
-            },
-            Some(LimitBy::AlreadyLow) => message.text("; it is below the residual limit with no hydrant open"),
-            Some(LimitBy::Source) => message.text("; the source gives no more"),
+        message = match (verdict.limit_by, verdict.limit_at) {
+            (Some(LimitBy::Elsewhere(_)), Some(other)) => {
+                message.text("; pressure at ").feature(other).text(" is the limit")
+            }
+            (Some(LimitBy::Elsewhere(node)), None) => {
+                message.text(format!("; pressure at node {} is the limit", node.0 + 1))
+            }
+            (Some(LimitBy::AlreadyLow), _) => message.text("; it is below the residual limit with no hydrant open"),
+            (Some(LimitBy::Source), _) => message.text("; the source gives no more"),
             _ => message.text("; its own pressure is the limit"),
         };
+        if let Some((features, step_m)) = verdict.suspect {
+            let known = self.suspects.iter().find(|suspect| suspect.features == features);
+            message = known.map_or(message.clone(), |suspect| suspect.named(message, step_m));
+        }
         let limit_from = if asset.needed_m3_per_s.is_some() {
             "map"
         } else {
@@ -442,10 +399,11 @@ impl Run<'_> {
             .measured(given, Quantity::Flow)
             .limit(given + short, limit_from);
         finding.at = asset.at;
-        finding.others = match verdict.limit_by {
-            Some(LimitBy::Elsewhere(node)) => who_draws_at(self.subject, node.at()).into_iter().collect(),
-            _ => Vec::new(),
-        };
+        finding.others = verdict
+            .limit_at
+            .into_iter()
+            .chain(verdict.suspect.into_iter().flat_map(|found| found.0))
+            .collect();
         Some(finding)
     }
 }
@@ -457,15 +415,4 @@ fn limit_by(own: NodeIx, limit: &hydraulics::Limit) -> LimitBy {
         hydraulics::Limit::AlreadyLow(_) => LimitBy::AlreadyLow,
         hydraulics::Limit::Source(_) | hydraulics::Limit::Nothing => LimitBy::Source,
     }
-}
-
-/// The user's feature at a node: its point, else the first customer who draws there.
-pub(crate) fn who_draws_at(subject: &Subject<'_>, node: usize) -> Option<crate::finding::FeatureRef> {
-    super::pressure_low::feature_at(subject, node).or_else(|| {
-        let taps = subject.map.customers.iter();
-        let at = taps
-            .enumerate()
-            .find_map(|(at, tap)| (tap.as_ref()?.node as usize == node).then_some(at))?;
-        Some(subject.assets.customers[at].origin)
-    })
 }

@@ -5,12 +5,13 @@
 //! - An assumed bore decides the answer where it makes the water lose a metre of head or more: serious. Where the main
 //!   carries next to nothing in every case it is a note. The bore that was assumed is said.
 //! - A pressure out of bounds beside an elevation that is doubted is more likely a fault of the map: one step lower, and said.
+//! - A connection left apart, or a closed valve, that likely explains a hydrant's shortfall is one step more serious.
 //!
 //! All else keeps the severity that its check gave it.
 
-use std::collections::HashMap;
+use std::collections::{HashMap, HashSet};
 
-use super::{Screened, Subject};
+use super::{Flag, Screened, Subject};
 use crate::assets::Point;
 use crate::finding::{Code, FeatureRef, Finding, Severity};
 use crate::units::Quantity;
@@ -53,7 +54,25 @@ pub fn grade(subject: &Subject<'_>, screened: &Screened, findings: &mut [Finding
             _ => {}
         }
     }
+    raise_suspects(screened, findings);
     sort(findings);
+}
+
+/// Raises what likely explains a hydrant's shortfall by one step.
+fn raise_suspects(screened: &Screened, findings: &mut [Finding]) {
+    let hydrants = screened.fire.verdicts().into_iter().flatten();
+    let short = hydrants.filter(|hydrant| hydrant.flag == Flag::Short);
+    let suspects: HashSet<[FeatureRef; 2]> = short.filter_map(|hydrant| Some(hydrant.suspect?.0)).collect();
+    let apart = |code: Code| matches!(code, Code::NearMiss | Code::ValveClosed | Code::CrossingNotJoined);
+    for finding in findings.iter_mut().filter(|finding| apart(finding.code)) {
+        let takes_part = |feature: &FeatureRef| finding.feature == Some(*feature) || finding.others.contains(feature);
+        if suspects.iter().any(|suspect| suspect.iter().all(takes_part)) {
+            finding.severity = match finding.severity {
+                Severity::Note => Severity::Warning,
+                _ => Severity::Serious,
+            };
+        }
+    }
 }
 
 /// Grades an assumed bore by the main that it matters most for, and says the bore where the finding is about one main.

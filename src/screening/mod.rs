@@ -8,9 +8,11 @@ mod coverage;
 mod fire_flow;
 mod gradient_high;
 mod grading;
+mod kept_places;
 mod limits;
 mod pressure_high;
 mod pressure_low;
+mod suspects;
 mod undelivered;
 mod velocity_high;
 
