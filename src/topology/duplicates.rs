@@ -1,7 +1,7 @@
 //! Mains that lie on one another: identical, drawn the other way round, or nearly identical.
 //!
-//! Two lines are nearly identical when every vertex of each lies within the tolerance, and within a quarter of the shorter
-//! one's length, of the other, and their ends pair up alike. That alone would also take two mains laid side by side in
+//! Two lines are nearly identical when every vertex of each lies within the tolerance, and within a twentieth of the
+//! shorter one's length, of the other, and their ends pair up alike. That alone would also take two mains laid side by side in
 //! one street: so where two paired ends lie apart, one of them must be loose, with no other main ending on it. A copy
 //! that slipped is loose; a real main goes on.
 //!
@@ -23,8 +23,8 @@ use crate::assets::{Main, Point};
 use crate::finding::{Code, Finding, Sentence};
 use crate::units::Quantity;
 
-/// How far apart a shorter main and its copy may lie, as a share of its length.
-const SHARE_OF_LENGTH: f64 = 0.25;
+/// How far apart a shorter main and its copy may lie, as a share of its length: laterals and services lie side by side.
+const SHARE_OF_LENGTH: f64 = 0.05;
 
 /// Leaves out all but one of every set of lines that lie on one another. Counts the lines left out.
 pub(super) fn leave_out(work: &mut Work) -> u32 {

@@ -104,6 +104,10 @@ fn nearest_other(work: &Work, spot: u32, end: End) -> Option<Miss> {
 }
 
 fn miss(work: &Work, spot: u32, end: End, hit: Hit) -> Option<Miss> {
+    // The gap between parts of one main is said as that.
+    if hit.line != end.line() && work.lines.main(hit.line) == work.lines.main(end.line()) {
+        return None;
+    }
     let at = work.web.at[spot as usize];
     let node = end_near(work, hit, at);
     let to = match node {

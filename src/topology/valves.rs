@@ -101,12 +101,16 @@ fn place_one(work: &mut Work, index: usize, at: Point) -> Option<ValvePlace> {
 /// Whether a line belongs to one of the mains, or was kept for one that lies on it.
 fn names(work: &Work, mains: &[u32], line: u32) -> bool {
     let main = work.lines.main(line);
-    mains.contains(&main)
-        || work
-            .map
-            .same_as
+    // Copies stand in rising order.
+    let kept_for = |named: u32| {
+        let copies = &work.map.same_as;
+        let first = copies.partition_point(|&(copy, _)| copy < named);
+        copies[first..]
             .iter()
-            .any(|&(dropped, kept)| kept == main && mains.contains(&dropped))
+            .take_while(|&&(copy, _)| copy == named)
+            .any(|&(_, kept)| kept == main)
+    };
+    mains.contains(&main) || mains.iter().any(|&named| kept_for(named))
 }
 
 fn main_unknown(

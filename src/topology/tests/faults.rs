@@ -130,6 +130,14 @@ fn parts_that_do_not_touch_are_said_unless_the_gap_is_within_the_tolerance() {
 }
 
 #[test]
+fn a_gap_between_parts_is_said_once_however_wide() {
+    let mut board = Board::new(1.0);
+    board.parts(&[&[[0.0, 0.0], [50.0, 0.0]], &[[52.0, 0.0], [100.0, 0.0]]]);
+    board.source([0.0, 0.0]);
+    assert_eq!(board.infer().warnings(), ["multipart-apart"]);
+}
+
+#[test]
 fn a_ring_tied_in_once_is_a_self_loop_and_keeps_its_water() {
     let mut board = Board::new(1.0);
     cross(&mut board);
@@ -235,6 +243,9 @@ fn two_mains_between_the_same_nodes_and_two_in_one_street_are_no_duplicates() {
     board.main(&[[0.0, 60.0], [90.0, 60.0]]);
     board.main(&[[-100.0, 60.7], [0.1, 60.7]]);
     board.main(&[[0.1, 60.7], [90.0, 60.7]]);
+    // Services side by side.
+    board.main(&[[20.0, 60.0], [20.0, 68.0]]);
+    board.main(&[[20.7, 60.0], [20.7, 68.0]]);
     // Short pieces of a valve cluster, end to end.
     board.main(&[[300.0, 0.0], [300.4, 0.0]]);
     board.main(&[[300.4, 0.0], [300.8, 0.0]]);
