@@ -124,10 +124,36 @@ pub const UNITS: &[Unit] = &[
     unit("", "", Quantity::Plain, 1.0),
 ];
 
+/// Words that people write for a unit, and its name.
+const SPELLINGS: &[(&str, &str)] = &[
+    ("inch", "in"),
+    ("inches", "in"),
+    ("\"", "in"),
+    ("foot", "ft"),
+    ("feet", "ft"),
+    ("metre", "m"),
+    ("metres", "m"),
+    ("meter", "m"),
+    ("meters", "m"),
+    ("millimetre", "mm"),
+    ("millimetres", "mm"),
+    ("millimeters", "mm"),
+    ("us survey feet", "us-ft"),
+    ("l/sec", "l/s"),
+    ("litres per second", "l/s"),
+    ("gallons per minute", "gpm"),
+    ("usgpm", "gpm"),
+    ("m3/hr", "m3/h"),
+];
+
 impl Unit {
     /// The unit of `quantity` that `text` names, whatever its case; `None` if there is none.
     pub fn parse(text: &str, quantity: Quantity) -> Option<Unit> {
         let wanted = text.trim().to_lowercase();
+        let wanted = SPELLINGS
+            .iter()
+            .find(|(spelt, _)| *spelt == wanted)
+            .map_or(wanted.as_str(), |(_, name)| name);
         Self::all(quantity).find(|unit| unit.name.to_lowercase() == wanted || unit.suffix == wanted)
     }
 

@@ -325,16 +325,17 @@ pub(super) fn doubtful_diameter_unit(
         return None;
     }
     let feature = FeatureRef { layer, row: row as u32 };
-    let instead = better.map_or(String::new(), |better| format!("; they would fit {better}"));
+    let instead = better.map_or(String::new(), |better| format!("; they would fit `{better}`"));
+    let code = if better.is_some() {
+        Code::DiameterUnitWrong
+    } else {
+        Code::DiameterUnitDoubtful
+    };
     let said = Sentence::new().text(format!(
         "the diameters in `{column}` were read in {unit} ({}), and do not fit it: the middle one is {middle}{instead}",
         from.words()
     ));
-    Some(
-        Finding::new(Code::DiameterUnitDoubtful, said)
-            .severity(Severity::Serious)
-            .on(feature),
-    )
+    Some(Finding::new(code, said).severity(Severity::Serious).on(feature))
 }
 
 /// Names of the columns that every layer may be read by.

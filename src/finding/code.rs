@@ -131,7 +131,11 @@ codes! {
     DiameterUnitDoubtful "diameter-unit-doubtful" Map Serious
         "The diameters of a layer do not fit the unit that was stated or inferred."
         "A wrong unit makes every head loss wrong by orders of magnitude."
-        "State the unit in the study: `diameter = { column = \"...\", unit = \"mm\" }`."
+        "Check the column and the unit that the study states for it."
+    DiameterUnitWrong "diameter-unit-wrong" Map Serious
+        "The diameters of a layer fit another unit than the one that was stated or inferred."
+        "Every head loss would be wrong by orders of magnitude: nothing is calculated until the unit is settled."
+        "State the unit that fits in the study, for example `diameter = { column = \"DIAM\", unit = \"in\" }`."
     FrictionValueImpossible "friction-value-impossible" Map Warning
         "A C-factor or roughness is outside the range met in practice."
         "Head loss along the main would be wrong; the value is treated as missing."
@@ -192,11 +196,11 @@ codes! {
     EndJoined "end-joined" Map Note
         "Two ends that do not quite meet were joined, being within the tolerance."
         "Joined is the likelier reading; if they are really apart, water is shown where none flows."
-        "Close the gap in the map, or mark the join `apart`."
+        "Close the gap in the map, or move the end away if the two do not connect."
     EndJoinedToMiddle "end-joined-to-middle" Map Note
         "An end that does not quite reach a main was joined to it, being within the tolerance."
         "Joined is the likelier reading; if they are really apart, water is shown where none flows."
-        "Close the gap in the map, or mark the join `apart`."
+        "Close the gap in the map, or move the end away if the two do not connect."
     Overshoot "overshoot" Map Note
         "A main runs past the main it meets by less than the tolerance; it was joined there and the tail left out."
         "Without the join the two would pass each other."

@@ -186,12 +186,13 @@ fn joined(out: &mut String, report: &Report<'_>, words: &Words<'_>) -> std::fmt:
     for row in &table.rows {
         writeln!(
             out,
-            "  {:>9} {:>10} {:>9} {:>14} % {:>17}",
+            "  {:>9} {:>10} {:>9} {:>14} % {:>17}{}",
             words.number(row.tolerance_m, Quantity::Length),
             thousands(row.joins as usize),
             thousands(row.islands as usize),
             percent(row.largest_share),
-            thousands(row.swallowed as usize)
+            thousands(row.swallowed as usize),
+            if row.tolerance_m == tolerance { "   in use" } else { "" }
         )?;
     }
     writeln!(
@@ -250,12 +251,13 @@ fn kinds(out: &mut String, found: &[OfCode<'_>], words: &Words<'_>) -> std::fmt:
             of.code.text().name
         )?;
     }
-    if found.len() > KINDS_SHOWN {
-        writeln!(
-            out,
-            "  and {} of other kinds, in the findings layer",
-            found[KINDS_SHOWN..].iter().map(|of| of.count).sum::<usize>()
-        )?;
+    let rest: Vec<String> = found
+        .iter()
+        .skip(KINDS_SHOWN)
+        .map(|of| format!("{} {}", of.code.text().name, of.count))
+        .collect();
+    if !rest.is_empty() {
+        writeln!(out, "  and {}", rest.join(", "))?;
     }
     Ok(())
 }
@@ -350,6 +352,12 @@ fn fire(out: &mut String, calculation: &Calculation, report: &Report<'_>, words:
 }
 
 fn solution(out: &mut String, calculation: &Calculation, report: &Report<'_>) -> std::fmt::Result {
+    if calculation.network.sources.is_empty() {
+        return writeln!(
+            out,
+            "\nNothing was solved: no node of the map has a known head, and the study names no source"
+        );
+    }
     writeln!(out, "\nHow good the solution is")?;
     for solved in facts::all_cases(report) {
         match &solved.outcome {

@@ -5,7 +5,7 @@ use std::path::PathBuf;
 use super::{CaseSettings, Study};
 use crate::assets::{self, Assets, Basis, NodeKind, Reading, Role, Valued};
 use crate::calculation::{self, Calculation};
-use crate::finding::{Error, Finding, nearest};
+use crate::finding::{Code, Error, Finding, Piece, nearest};
 use crate::layers::{Format, Layer, LayerSet, LocalPlane, ReadOptions};
 use crate::network::{AssemblySettings, Case};
 use crate::report::{self, Report, UsedSetting, Written};
@@ -58,6 +58,9 @@ pub fn run(study: &Study, options: &RunOptions, watch: &dyn Watch) -> Result<Out
     let plane = LocalPlane::for_layer(first_mains(study, &set)?)?;
     step(watch, "reading columns", 0, 0)?;
     let mut reading = assets::read(&set, &study.assets, &plane, &study.path)?.into_value(&mut findings);
+    if !options.map_only {
+        stop_for_a_wrong_unit(study, &findings)?;
+    }
     let worked = if options.map_only {
         let (map, found) = calculation::map_only(&reading.assets, &study.joining, watch)?;
         findings.extend(found);
@@ -126,6 +129,23 @@ pub fn run_and_write(study: &Study, options: &RunOptions, watch: &dyn Watch) -> 
     outcome.findings.extend(written.noticed.iter().cloned());
     screening::sort(&mut outcome.findings);
     Ok((outcome, written))
+}
+
+/// A unit that the diameters contradict makes every answer wrong, and an assumption in its place would hide that: the whole
+/// layer would be assumed.
+fn stop_for_a_wrong_unit(study: &Study, findings: &[Finding]) -> Result<(), Error> {
+    let Some(found) = findings.iter().find(|finding| finding.code == Code::DiameterUnitWrong) else {
+        return Ok(());
+    };
+    let words = found.message.pieces().iter().filter_map(|piece| match piece {
+        Piece::Text(words) => Some(words.as_str()),
+        _ => None,
+    });
+    Err(Error::study(
+        &study.path,
+        words.collect::<String>(),
+        found.code.text().todo,
+    ))
 }
 
 fn read_layers(study: &Study, findings: &mut Vec<Finding>, watch: &dyn Watch) -> Result<LayerSet, Error> {

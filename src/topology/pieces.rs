@@ -137,11 +137,13 @@ fn say(work: &mut Work, about: &About, piece: u32, mains: &[u32], no_source: boo
     } else {
         "has no source"
     };
-    let message = Sentence::new().text("A piece of ");
+    let message = Sentence::new().text("a piece of ");
     let message = message.number(work.map.piece_length_m[piece as usize], Quantity::Length);
-    let message = message
-        .text(format!(" ({} mains, among them ", mains.len()))
-        .feature(feature);
+    let of_mains = match mains.len() {
+        1 => " (".to_string(),
+        many => format!(" ({many} mains, among them "),
+    };
+    let message = message.text(of_mains).feature(feature);
     let mut message = message.text(format!(") {what}"));
     let mut finding = Finding::new(Code::Island, Sentence::new()).on(feature);
     if let Some((apart_m, line, at)) = nearest_other(work, about, piece) {

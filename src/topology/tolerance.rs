@@ -14,7 +14,7 @@ use super::{JoinSettings, ToleranceRow, ToleranceTable};
 use crate::finding::Sentence;
 use crate::units::Quantity;
 
-/// The tolerances compared, m.
+/// The tolerances compared besides the one in use, m.
 const COMPARED_M: [f64; 9] = [0.0, 0.001, 0.01, 0.1, 0.25, 0.5, 1.0, 2.0, 5.0];
 /// The greatest of them.
 pub(super) const FARTHEST_M: f64 = 5.0;
@@ -49,10 +49,14 @@ pub(super) fn compare(work: &mut Work) -> u32 {
     }
     unite_classes(&work.web, &mut touching);
     let total_m: f64 = work.lines.list.iter().map(|line| line.length_m).sum();
-    let mut rows = Vec::with_capacity(COMPARED_M.len());
+    let mut compared_m = COMPARED_M.to_vec();
+    compared_m.push(work.settings.tolerance_m);
+    compared_m.sort_by(f64::total_cmp);
+    compared_m.dedup();
+    let mut rows = Vec::with_capacity(compared_m.len());
     let mut next = 0;
     let mut joined = touching;
-    for tolerance_m in COMPARED_M {
+    for tolerance_m in compared_m {
         let mut row_of = if tolerance_m == 0.0 {
             exact.clone()
         } else {

@@ -186,7 +186,7 @@ fn a_column_in_another_unit_than_stated_is_one_serious_fault() {
         .map(|row| json!({"id": row, "d": ([4, 6, 8, 12][row % 4])}))
         .collect();
     let read = read_mains("diameter = { column = \"d\", unit = \"mm\" }", &rows);
-    assert_eq!(named(&read, Code::DiameterUnitDoubtful).len(), 1);
+    assert_eq!(named(&read, Code::DiameterUnitWrong).len(), 1);
     assert_eq!(read.findings.len(), 1, "{:?}", read.findings);
 }
 

@@ -192,6 +192,31 @@ fn the_hydrants_that_are_short_are_those_an_independent_solve_found() {
     }
 }
 
+/// A map fault behind a shortfall is named on the hydrant: the one that was planted, and none where the main is too small.
+#[test]
+fn a_hydrant_that_is_short_by_a_map_fault_names_the_fault() {
+    for form in forms() {
+        let outcome = outcome(&form);
+        let verdicts = hydrants(&outcome).iter().zip(&outcome.reading.assets.hydrants);
+        for (verdict, hydrant) in verdicts.filter(|(verdict, _)| verdict.flag == Flag::Short) {
+            let id = outcome.reading.names.id(hydrant.origin).expect("an id");
+            let rows = csv(&form, "short-hydrants.csv");
+            let row = rows.iter().find(|row| row[0] == id).expect("a row for each");
+            match (row[1].as_str(), verdict.suspect) {
+                ("map fault", Some((features, _))) => {
+                    let named = features.map(|feature| outcome.reading.names.id(feature).expect("an id").to_string());
+                    assert!(
+                        named.iter().any(|id| row[2].contains(id.as_str())),
+                        "{form}: {id}: {named:?}"
+                    );
+                }
+                ("map fault", None) => panic!("{form}: {id} names no fault"),
+                (_, suspect) => assert_eq!(suspect, None, "{form}: {id}"),
+            }
+        }
+    }
+}
+
 /// The two forms hold the same numbers rounded in their own units: a hundredth of a foot is 3 mm.
 #[test]
 fn both_forms_of_the_town_give_the_same_answer() {
