@@ -331,7 +331,7 @@ impl Desk<'_> {
         let Some(name) = &wanted.minor_loss else {
             return Ok(vec![0.0; taking_part.len()]);
         };
-        let slots = self.read_plain(layer, "minor_loss", name, Meaning::MinorLoss, taking_part)?;
+        let slots = self.read_plain(layer, "minor_loss", name, Meaning::LossCoefficient, taking_part)?;
         let mut negative = Vec::new();
         let losses = slots.iter().enumerate().map(|(row, slot)| {
             let value = slot.value().unwrap_or(0.0);

@@ -11,7 +11,7 @@ pub(super) enum Meaning {
     NeededFlow,
     CFactor,
     Roughness,
-    MinorLoss,
+    LossCoefficient,
     Length,
     Lift,
 }
@@ -83,7 +83,7 @@ pub(super) fn is_filler(meaning: Meaning, value: f64, others: Option<Spread>) ->
         }
         Meaning::CFactor => always || [0.0, -1.0, -9.0, 999.0].contains(&value),
         Meaning::Roughness => always || [-1.0, -9.0, 999.0].contains(&value) || (value == 99.0 && far),
-        Meaning::MinorLoss => always || [-1.0, -9.0].contains(&value) || (value == 999.0 && far),
+        Meaning::LossCoefficient => always || [-1.0, -9.0].contains(&value) || (value == 999.0 && far),
         Meaning::Length => always && (far || value < 0.0) || value == -1.0,
         Meaning::Lift => always || [-1.0, -9.0, 99.0, 999.0].contains(&value),
     }
@@ -95,7 +95,7 @@ pub(super) fn is_possible(meaning: Meaning, si: f64) -> bool {
     let possible = match meaning {
         Meaning::Elevation | Meaning::Head => -1_000.0..=20_000.0,
         Meaning::Demand | Meaning::NeededFlow => -1_000.0..=1_000.0,
-        Meaning::MinorLoss => -1e6..=1e6,
+        Meaning::LossCoefficient => -1e6..=1e6,
         Meaning::Length => 0.0..=1e6,
         Meaning::Lift => -1_000.0..=1_000.0,
         Meaning::Diameter | Meaning::CFactor | Meaning::Roughness => f64::MIN..=f64::MAX,
@@ -121,7 +121,7 @@ mod tests {
         assert!(is_filler(Meaning::Elevation, 0.0, high_ground));
         assert!(!is_filler(Meaning::Demand, 0.0, None));
         assert!(!is_filler(Meaning::Demand, -1.0, None));
-        assert!(!is_filler(Meaning::MinorLoss, 99.0, None));
+        assert!(!is_filler(Meaning::LossCoefficient, 99.0, None));
         assert!(!is_filler(Meaning::Head, 99.0, None));
         assert!(is_filler(Meaning::Head, 0.0, None));
     }

@@ -173,7 +173,7 @@ pub(super) fn valve_kind(text: &str) -> Valves {
         Some("flow control valve")
     } else if has(&["altitude"]) {
         Some("altitude valve")
-    } else if has(&["throttle", "throttled", "throttling", "tcv"]) || said.contains("partly open") {
+    } else if has(&["throttle", "throttled", "throttling"]) || said.contains("partly open") {
         Some("partly open valve")
     } else if has(&["regulating", "regulator", "control"]) {
         Some("regulating valve")

@@ -436,10 +436,10 @@ fn islands(town: &mut Town) {
                 .expect("the town has nodes");
             let middle = add(scale(add(town.nodes[from].at, site), 0.5), [0.0, 14.0]);
             let line = vec![town.nodes[from].at, middle, site];
-            let mut link = distribution(laid, 6.0, "low", line, [from, nodes[0]]);
-            (link.status, link.road) = ("proposed", "Fallow End".to_string());
-            let link = town.add_main(link);
-            town.plant("left out by status", "mains-left-out", &[link], "proposed");
+            let mut lane = distribution(laid, 6.0, "low", line, [from, nodes[0]]);
+            (lane.status, lane.road) = ("proposed", "Fallow End".to_string());
+            let lane = town.add_main(lane);
+            town.plant("left out by status", "mains-left-out", &[lane], "proposed");
         }
     }
 }
