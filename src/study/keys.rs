@@ -387,6 +387,14 @@ impl<'a> Section<'a> {
         found
     }
 
+    /// Records what stands for a default that is not the same in every run; as the last thing read.
+    pub fn default_is(&self, name: &str, value: String) {
+        let mut used = self.file.used.borrow_mut();
+        if let Some(last) = used.last_mut().filter(|last| last.key == name && !last.given) {
+            last.value = value;
+        }
+    }
+
     /// A text.
     pub fn text(&self, name: &str) -> Result<Option<String>, Error> {
         match self.take(name) {

@@ -14,7 +14,7 @@ use std::path::{Path, PathBuf};
 use crate::assets::{AssetSettings, Role};
 use crate::finding::Error;
 use crate::hydraulics;
-use crate::screening::{Limit, Limits};
+use crate::screening::{Fire, Limits};
 use crate::topology::JoinSettings;
 use crate::units::UnitSystem;
 
@@ -42,19 +42,6 @@ pub struct CaseSettings {
     pub tank_heads_m: Vec<(String, f64)>,
     /// What its results are held against.
     pub limits: Limits,
-}
-
-/// What is asked about fire flow.
-#[derive(Clone, Debug, PartialEq)]
-pub struct FireSettings {
-    /// Index of the case that the fire comes on top of.
-    pub case: usize,
-    /// Pressure that must be left at the hydrant, m.
-    pub residual_m: Limit,
-    /// Needed flow of hydrants whose row has none, m3/s.
-    pub needed_m3_per_s: Option<f64>,
-    /// Pressure that must be left wherever customers draw, m.
-    pub keep_elsewhere_m: Option<Limit>,
 }
 
 /// A setting and whether the study gave it.
@@ -90,7 +77,7 @@ pub struct Study {
     /// The demand conditions; at least one.
     pub cases: Vec<CaseSettings>,
     /// Fire flow, if asked for.
-    pub fire: Option<FireSettings>,
+    pub fire: Option<Fire>,
     /// What results are held against.
     pub limits: Limits,
     /// Every setting, given or default, in the order of reading.

@@ -9,7 +9,7 @@ use crate::finding::{Code, Error, Finding, Piece, nearest};
 use crate::layers::{Format, Layer, LayerSet, LocalPlane, ReadOptions};
 use crate::network::{AssemblySettings, Case};
 use crate::report::{self, Report, UsedSetting, Written};
-use crate::screening::{self, Fire, Limits};
+use crate::screening::{self, Limits};
 use crate::topology::PipeMap;
 use crate::watch::{Watch, step};
 
@@ -191,19 +191,13 @@ fn calculation_settings(study: &Study, reading: &mut Reading) -> Result<calculat
     for case in &study.cases {
         cases.push((network_case(study, case, reading)?, case.limits.clone()));
     }
-    let fire = study.fire.as_ref().map(|fire| Fire {
-        case: fire.case,
-        residual_m: fire.residual_m.clone(),
-        needed_m3_per_s: fire.needed_m3_per_s,
-        keep_elsewhere_m: fire.keep_elsewhere_m.clone(),
-    });
     let limits: Limits = study.limits.clone();
     Ok(calculation::Settings {
         joining: study.joining.clone(),
         assembly: AssemblySettings::default(),
         hydraulics: study.hydraulics.clone(),
         cases,
-        fire,
+        fire: study.fire.clone(),
         limits,
     })
 }

@@ -4,10 +4,10 @@ use std::path::Path;
 use std::time::{SystemTime, UNIX_EPOCH};
 
 use super::keys::{Section, StudyFile};
-use super::{CaseSettings, FireSettings, LayerFile, Study, tables};
+use super::{CaseSettings, LayerFile, Study, tables};
 use crate::assets::{
     AssetSettings, Basis, CustomersColumns, DiameterIs, FrictionLaw, HydrantsColumns, LayerColumns, LengthFrom,
-    MainsColumns, NodesColumns, Reach, Role, StudySource, Valued, ValvesColumns,
+    MainsColumns, NodesColumns, Reach, Role, SourceAt, StudySource, Valued, ValvesColumns,
 };
 use crate::finding::{Error, nearest};
 use crate::hydraulics::{self, viscosity_m2_per_s};
@@ -69,9 +69,7 @@ pub(super) fn parse(path: &Path, text: &str) -> Result<Study, Error> {
             friction.number("default_roughness", 0.0..=30.0 * M_PER_MM)?,
             DEFAULT_ROUGHNESS_M,
         ),
-        age_in_year: friction
-            .plain("age_in_year", 1_800.0..=3_000.0)?
-            .map_or_else(this_year, |year| year as i32),
+        age_in_year: age_in_year(&friction)?,
         hydrants_at_own_elevation: true,
         reach: DEFAULT_REACH,
     };
@@ -81,6 +79,7 @@ pub(super) fn parse(path: &Path, text: &str) -> Result<Study, Error> {
     let joining = joining(&top.section("joining", &empty)?)?;
     let limits = limits(&top.section("limits", &empty)?, &Limits::default())?;
     let cases = cases(&top, &limits)?;
+    one_head_each(&top, &assets.sources, &cases)?;
     let by_case = cases.iter().flat_map(|case| &case.tank_heads_m);
     assets.heads_by_case = by_case.map(|(id, _)| id.trim().to_string()).collect();
     let fire = match top.sections("fire")?.pop() {
@@ -113,6 +112,16 @@ fn or_assumed(given: Option<f64>, usual: f64) -> Valued<f64> {
             basis: Basis::Assumed,
         },
     }
+}
+
+/// The year that ages are counted to. Taken from the clock it is recorded, for the friction of the mains follows from it.
+fn age_in_year(friction: &Section<'_>) -> Result<i32, Error> {
+    if let Some(year) = friction.plain("age_in_year", 1_800.0..=3_000.0)? {
+        return Ok(year as i32);
+    }
+    let year = this_year();
+    friction.default_is("age_in_year", format!("{year} (the year of the run)"));
+    Ok(year)
 }
 
 /// The calendar year by the clock, to within the leap days' drift.
@@ -347,6 +356,26 @@ fn source(section: &Section<'_>) -> Result<StudySource, Error> {
     })
 }
 
+/// Refuses a head by case at a node that a source of the study stands on: one of the two would be lost.
+fn one_head_each(top: &Section<'_>, sources: &[StudySource], cases: &[CaseSettings]) -> Result<(), Error> {
+    for case in cases {
+        for (id, _) in &case.tank_heads_m {
+            if sources
+                .iter()
+                .any(|source| source.at == SourceAt::Id(id.trim().to_string()))
+            {
+                let what = format!(
+                    "`tank_levels` of the case `{}` and a `[[source]]` both give the head at `{}`",
+                    case.name,
+                    id.trim()
+                );
+                return Err(top.error("source", what, "Keep one of the two."));
+            }
+        }
+    }
+    Ok(())
+}
+
 fn law(section: &Section<'_>) -> Result<FrictionLaw, Error> {
     Ok(match section.choice("law")? {
         Some("darcy-weisbach") => FrictionLaw::DarcyWeisbach,
@@ -503,7 +532,7 @@ fn cases(top: &Section<'_>, limits_of_study: &Limits) -> Result<Vec<CaseSettings
     Ok(cases)
 }
 
-fn fire(section: &Section<'_>, cases: &[CaseSettings], assets: &mut AssetSettings) -> Result<FireSettings, Error> {
+fn fire(section: &Section<'_>, cases: &[CaseSettings], assets: &mut AssetSettings) -> Result<Fire, Error> {
     let name = section.needed_text("case", &format!("case = \"{}\"", cases[cases.len() - 1].name))?;
     let Some(case) = cases.iter().position(|case| case.name == name.trim()) else {
         let names = cases.iter().map(|case| case.name.as_str());
@@ -528,7 +557,7 @@ fn fire(section: &Section<'_>, cases: &[CaseSettings], assets: &mut AssetSetting
         }
         _ => {}
     }
-    Ok(FireSettings {
+    Ok(Fire {
         case,
         residual_m: section
             .number("residual", PRESSURES_M)?
@@ -541,7 +570,7 @@ fn fire(section: &Section<'_>, cases: &[CaseSettings], assets: &mut AssetSetting
 #[cfg(test)]
 mod tests {
     use super::*;
-    use crate::assets::{NumberOrColumn, SourceAt};
+    use crate::assets::NumberOrColumn;
 
     const EVERYTHING: &str = r#"
         title = "Existing network"
@@ -724,6 +753,9 @@ mod tests {
         assert!(study.fire.is_none());
         let used = |key: &str| study.used.iter().find(|used| used.key == key).unwrap();
         assert_eq!((used("from").given, used("from").table.as_str()), (true, "[mains]"));
+        // The year by the clock changes the answer from one year to the next: the number itself is on record.
+        let year = study.assets.age_in_year;
+        assert_eq!(used("age_in_year").value, format!("{year} (the year of the run)"));
         assert_eq!(
             (used("tolerance").given, used("tolerance").value.as_str()),
             (false, "0.3 m")
@@ -861,6 +893,10 @@ mod tests {
             ("[[source]]\nat = \"N1\"\nstatic_psi = 60", "a source by a flow test"),
             ("[[source]]\nat = \"N1\"", "has no `head_m`"),
             ("[[source]]\nhead_m = 1", "has no `at`"),
+            (
+                "[[source]]\nat = \"T1\"\nhead_m = 1\n[[case]]\nname = \"a\"\ntank_levels_m = { \"T1 \" = 1 }",
+                "`tank_levels` of the case `a` and a `[[source]]` both give the head at `T1`",
+            ),
             ("[[source]]\nat = true\nhead_m = 1", "is true or false. It takes an id"),
             ("[[source]]\nat = \"N\"\nhead_m = 1\npressure_m = 2", "not both"),
             ("[[case]]\nname = \"a\"\noff = [\"p\"]", "pumps"),
