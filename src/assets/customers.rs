@@ -15,7 +15,7 @@ impl Desk<'_> {
         let taking_part = self.select(&wanted.common, Role::Customer, true)?;
         let points = self.read_points(layer, &taking_part, Role::Customer)?;
         let elevations = self.elevations(layer, wanted.elevation.as_ref(), Role::Customer, &taking_part)?;
-        let demands = self.demands(layer, wanted.demand.as_ref(), &taking_part)?;
+        let demands = self.demands(layer, wanted.demand.as_ref(), Role::Customer, &taking_part)?;
         let classes = self.customer_classes(wanted)?;
         let lifts = match &wanted.lift {
             None => vec![0.0; taking_part.len()],

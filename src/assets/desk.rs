@@ -176,6 +176,20 @@ impl<'a> Desk<'a> {
         self.report_together(Code::IdMissing, Severity::Note, &missing, said);
     }
 
+    /// Refuses a device that is not calculated: left out in silence it would make every pressure behind it wrong.
+    pub fn not_yet(&self, feature: FeatureRef, device: &str, column: &str, text: &str) -> Error {
+        Error::input(
+            &self.layer(feature.layer).source.path,
+            format!(
+                "{} is a {device} (`{column}` is {text}), which this version does not calculate",
+                self.names.of(feature)
+            ),
+            format!(
+                "Calculate the part of the map without such devices, or leave them out knowingly: `leave_out = {{ {column} = [\"{text}\"] }}`."
+            ),
+        )
+    }
+
     /// The point of every row in the local plane. A row without a usable one gets a finding, unless it does not take part.
     pub fn read_points(&mut self, layer: u16, taking_part: &[bool], role: Role) -> Result<Vec<Option<Point>>, Error> {
         let read = self.layer(layer);

@@ -23,6 +23,8 @@ const C_FACTORS: std::ops::RangeInclusive<f64> = 20.0..=165.0;
 const ROUGHEST_M: f64 = 30.0 * M_PER_MM;
 /// The first year of piped water under pressure in use today. Common practice, no source.
 const FIRST_YEAR: f64 = 1800.0;
+/// Stored lengths below this are no lengths, m.
+const SHORTEST_STORED_M: f64 = M_PER_MM;
 /// A stored length that differs by more than this share and more than this length disagrees. Common practice, no source.
 const LENGTH_SHARE: f64 = 0.1;
 const LENGTH_SLACK_M: f64 = 1.0;
@@ -84,6 +86,9 @@ impl Desk<'_> {
         for (row, cell) in column.cells.iter().enumerate().filter(|(row, _)| taking_part[*row]) {
             let Some(text) = cells::text(cell) else { continue };
             let feature = FeatureRef { layer, row: row as u32 };
+            if let Some(device) = words::device_elsewhere(&text) {
+                return Err(self.not_yet(feature, device, &column.name, &text));
+            }
             match words::main_kind(&text) {
                 Some(Ok(MainKind::RawWater) | Err(_)) => out.push((text, feature)),
                 Some(Ok(kind)) => kinds[row] = kind,
@@ -372,15 +377,37 @@ impl Desk<'_> {
             taking_part,
         };
         let read = self.read_numbers(&asked, |values| length_unit(values, &drawn_m))?;
-        let stored_m: Vec<Option<f64>> = read.slots.iter().map(Slot::value).collect();
+        let mut stored_m: Vec<Option<f64>> = read.slots.iter().map(Slot::value).collect();
+        let no_lengths = self.take_out_no_lengths(layer, &mut stored_m, taking_part);
         self.say_lengths(layer, column, &stored_m, &drawn_m, taking_part);
+        self.report(no_lengths, |count| {
+            format!("{count} stored lengths are no length of a main; the drawn ones count").into()
+        });
         Ok(match wanted.length_from {
             LengthFrom::Drawn => vec![None; taking_part.len()],
-            LengthFrom::Stored => stored_m
-                .into_iter()
-                .map(|length_m| length_m.filter(|length_m| *length_m > 0.0))
-                .collect(),
+            LengthFrom::Stored => stored_m,
         })
+    }
+
+    /// Takes out stored lengths that no main has: shared among its parts they would leave some with none at all.
+    fn take_out_no_lengths(&self, layer: u16, stored_m: &mut [Option<f64>], taking_part: &[bool]) -> Vec<Finding> {
+        let mut found = Vec::new();
+        for (row, stored) in stored_m.iter_mut().enumerate() {
+            let is_length = |length_m: &f64| length_m.is_finite() && *length_m >= SHORTEST_STORED_M;
+            let Some(length_m) = *stored else { continue };
+            if is_length(&length_m) {
+                continue;
+            }
+            *stored = None;
+            if taking_part[row] {
+                let feature = FeatureRef { layer, row: row as u32 };
+                let said = Sentence::new().feature(feature).text(" is stored as ");
+                let said = said.number(length_m, Quantity::Length);
+                let said = said.text(" long, which is no length of a main; the drawn one counts");
+                found.push(Finding::new(Code::LengthDisagrees, said).on(feature));
+            }
+        }
+        found
     }
 
     fn say_lengths(

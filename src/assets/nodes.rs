@@ -14,6 +14,9 @@ use crate::units::Quantity;
 /// Plain nodes with a head are taken for results of an earlier calculation from this number on, if they are half of all.
 const TOO_MANY_HEADS: usize = 20;
 
+/// Above this share of customers without a demand the answer rests on what is missing. Common practice, no source.
+const MANY_WITHOUT_DEMAND: f64 = 0.1;
+
 impl Desk<'_> {
     /// Reads a layer of node points.
     pub fn read_nodes(&mut self, wanted: &NodesColumns, settings: &AssetSettings) -> Result<Vec<NodePoint>, Error> {
@@ -24,7 +27,7 @@ impl Desk<'_> {
         let kinds = self.node_kinds(wanted, &taking_part)?;
         let elevations = self.elevations(layer, wanted.elevation.as_ref(), Role::Node, &taking_part)?;
         let heads = self.lengths(layer, "head", wanted.head.as_ref(), Meaning::Head, &taking_part)?;
-        let demands = self.demands(layer, wanted.demand.as_ref(), &taking_part)?;
+        let demands = self.demands(layer, wanted.demand.as_ref(), Role::Node, &taking_part)?;
         let zones = self.read_zones(&wanted.common)?;
         let rows = (0..taking_part.len()).filter(|row| taking_part[*row]);
         let nodes: Vec<NodePoint> = rows
@@ -102,6 +105,10 @@ impl Desk<'_> {
         let mut unknown = Vec::new();
         for (row, cell) in column.cells.iter().enumerate().filter(|(row, _)| taking_part[*row]) {
             let Some(text) = cells::text(cell) else { continue };
+            if let Some(device) = words::device_elsewhere(&text) {
+                let feature = FeatureRef { layer, row: row as u32 };
+                return Err(self.not_yet(feature, device, &column.name, &text));
+            }
             match words::node_kind(&text) {
                 Some(kind) => kinds[row] = kind,
                 None => unknown.push((text, FeatureRef { layer, row: row as u32 })),
@@ -175,14 +182,19 @@ impl Desk<'_> {
         Ok(read.slots.iter().map(Slot::value).collect())
     }
 
-    /// Average-day demands, m3/s, not below zero. Negative ones are said, and fillers that look like a demand.
+    /// Average-day demands, m3/s, not below zero; zero where there is none. Missing and negative ones are said.
     pub fn demands(
         &mut self,
         layer: u16,
         column: Option<&UnitColumn>,
+        role: Role,
         taking_part: &[bool],
     ) -> Result<Vec<f64>, Error> {
         let read = self.optional(layer, "demand", column, Quantity::Flow, Meaning::Demand, taking_part)?;
+        // Customers are there for their demand; nodes without one are usual where no column is named.
+        if column.is_some() || role == Role::Customer {
+            self.say_without_demand(layer, &read, role, taking_part);
+        }
         let mut negative = Vec::new();
         let demands = read.iter().enumerate().map(|(row, demand)| {
             let value = demand.unwrap_or(0.0);
@@ -203,6 +215,26 @@ impl Desk<'_> {
         let demands = demands.collect();
         self.report(negative, |count| format!("{count} demands are below zero").into());
         Ok(demands)
+    }
+
+    fn say_without_demand(&mut self, layer: u16, read: &[Option<f64>], role: Role, taking_part: &[bool]) {
+        let all = features(layer, taking_part);
+        let without = all
+            .iter()
+            .copied()
+            .filter(|feature| read[feature.row as usize].is_none());
+        let without: Vec<FeatureRef> = without.collect();
+        let many = without.len() as f64 > MANY_WITHOUT_DEMAND * all.len() as f64;
+        let severity = if many && role == Role::Customer {
+            Severity::Warning
+        } else {
+            Severity::Note
+        };
+        let said = match without.as_slice() {
+            [one] => Sentence::new().feature(*one).text(" has no demand: it draws nothing"),
+            many => format!("{} {}s have no demand: they draw nothing", many.len(), role.word()).into(),
+        };
+        self.report_together(Code::DemandMissing, severity, &without, said);
     }
 }
 

@@ -36,15 +36,22 @@ impl Desk<'_> {
             }
             if status_is_use {
                 for (word, features) in by_word(unknown) {
-                    let said = format!(
-                        "the status `{word}` ({}) is not known here and leaves nothing out",
-                        role.counted(features.len())
-                    );
-                    self.report_together(Code::ValueUnreadable, Severity::Note, &features, said.into());
+                    self.say_unknown_status(role, &word, &features);
                 }
             }
         }
         Ok(taking_part)
+    }
+
+    /// A status of a main decides whether it carries water; of the rest less hangs on it.
+    fn say_unknown_status(&mut self, role: Role, word: &str, features: &[FeatureRef]) {
+        let severity = match role {
+            Role::Main => Severity::Warning,
+            _ => Severity::Note,
+        };
+        let count = role.counted(features.len());
+        let said = format!("the status `{word}` ({count}) is not known here and leaves nothing out: taken as in use");
+        self.report_together(Code::ValueUnreadable, severity, features, said.into());
     }
 
     fn leave_out(&mut self, common: &LayerColumns, taking_part: &mut [bool]) -> Result<(), Error> {
@@ -79,19 +86,23 @@ impl Desk<'_> {
         self.left_out.push(LeftOut { rule, features });
     }
 
-    /// Says which mains were left out, a finding a rule.
+    /// Says what was left out, a finding a rule.
     pub fn say_left_out(&mut self) {
         let rules = std::mem::take(&mut self.left_out);
         for rule in &rules {
-            if self.names.role(rule.features[0].layer) != Some(Role::Main) {
+            let Some(role) = self.names.role(rule.features[0].layer) else {
                 continue;
-            }
+            };
+            let code = match role {
+                Role::Main => Code::MainsLeftOut,
+                _ => Code::PointsLeftOut,
+            };
             let said = Sentence::new().text(format!(
                 "left out by a rule: {} whose {}",
-                Role::Main.counted(rule.features.len()),
+                role.counted(rule.features.len()),
                 rule.rule
             ));
-            self.report_together(Code::MainsLeftOut, Severity::Note, &rule.features, said);
+            self.report_together(code, Severity::Note, &rule.features, said);
         }
         self.left_out = rules;
     }

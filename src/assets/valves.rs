@@ -8,7 +8,7 @@ use super::selection::by_word;
 use super::settings::ValvesColumns;
 use super::words::{self, Valves};
 use super::{Basis, Main, NamedMain, Role, Valued, Valve, ValveKind, cells, columns};
-use crate::finding::{Code, Error, FeatureRef, Sentence, Severity};
+use crate::finding::{Code, Error, FeatureRef, Finding, Sentence, Severity};
 
 impl Desk<'_> {
     /// Reads a layer of valves. `mains` are those that take part: a valve may name one.
@@ -59,20 +59,8 @@ impl Desk<'_> {
         Ok(kinds)
     }
 
-    fn not_yet(&self, feature: FeatureRef, device: &str, column: &str, text: &str) -> Error {
-        Error::input(
-            &self.layer(feature.layer).source.path,
-            format!(
-                "{} is a {device} (`{column}` is {text}), which this version does not calculate",
-                self.names.of(feature)
-            ),
-            format!(
-                "Calculate the part of the map without such devices, or leave them out knowingly: `leave_out = {{ {column} = [\"{text}\"] }}`."
-            ),
-        )
-    }
-
-    /// Whether each valve is shut. One whose status does not say is taken as open, and said.
+    /// Whether each valve is shut. Where the status does not say, a zone valve is taken as shut and any other as open, and it is
+    /// said: an open zone valve would join two zones, which a map does not mean by silence.
     fn valve_states(
         &mut self,
         wanted: &ValvesColumns,
@@ -80,17 +68,16 @@ impl Desk<'_> {
         taking_part: &[bool],
     ) -> Result<Vec<Valued<bool>>, Error> {
         let layer = wanted.common.layer;
-        let open = Valued {
-            value: false,
+        let assumed = kinds.iter().map(|kind| Valued {
+            value: *kind == ValveKind::Zone,
             basis: Basis::Assumed,
-        };
-        let mut states = vec![open; taking_part.len()];
-        let Some(column) = self.maybe_column(layer, "status", wanted.common.status.as_ref())? else {
-            return Ok(states);
-        };
+        });
+        let mut states: Vec<Valued<bool>> = assumed.collect();
+        let column = self.maybe_column(layer, "status", wanted.common.status.as_ref())?;
         let mut unknown = Vec::new();
-        for (row, cell) in column.cells.iter().enumerate().filter(|(row, _)| taking_part[*row]) {
-            match words::is_shut(cell, &column.name) {
+        for row in (0..taking_part.len()).filter(|row| taking_part[*row]) {
+            let cell = column.and_then(|column| Some((column, column.cells.get(row)?)));
+            match cell.and_then(|(column, cell)| words::is_shut(cell, &column.name)) {
                 Some(value) => {
                     states[row] = Valued {
                         value,
@@ -100,26 +87,53 @@ impl Desk<'_> {
                 // A valve that is off the line changes nothing, whatever its state.
                 None if kinds[row] == ValveKind::OffLine => {}
                 None => {
-                    let text = cells::text(cell).unwrap_or_default();
+                    let text = cell.and_then(|(_, cell)| cells::text(cell)).unwrap_or_default();
                     unknown.push((text, FeatureRef { layer, row: row as u32 }));
                 }
             }
         }
+        let is_zone = |feature: &FeatureRef| kinds[feature.row as usize] == ValveKind::Zone;
+        let (zone, other) = unknown.into_iter().partition(|(_, feature)| is_zone(feature));
+        self.say_zone_valves_unknown(zone);
+        self.say_valves_unknown(other, column.is_some());
+        Ok(states)
+    }
+
+    /// Zone valves that do not say whether they are shut, each by itself: what a zone is fed by hangs on it.
+    fn say_zone_valves_unknown(&mut self, unknown: Vec<(String, FeatureRef)>) {
+        let found = unknown.into_iter().map(|(word, feature)| {
+            let said = format!(" is a zone valve with {}; it is taken as closed", status_said(&word));
+            let said = Sentence::new().feature(feature).text(said);
+            Finding::new(Code::ValveStatusUnknown, said)
+                .severity(Severity::Warning)
+                .on(feature)
+        });
+        self.report(found.collect(), |count| {
+            format!("{count} zone valves do not say whether they are closed; they are taken as closed").into()
+        });
+    }
+
+    /// Other valves that do not say whether they are shut, together.
+    fn say_valves_unknown(&mut self, unknown: Vec<(String, FeatureRef)>, has_column: bool) {
         for (word, features) in by_word(unknown) {
-            let status = if word.is_empty() {
-                "no status".to_string()
-            } else {
-                format!("the status `{word}`")
-            };
             let said = match features.as_slice() {
+                many if !has_column => format!(
+                    "the study names no `status` column for this layer: {} taken as open",
+                    Role::Valve.counted(many.len())
+                )
+                .into(),
                 [one] => Sentence::new()
                     .feature(*one)
-                    .text(format!(" has {status}; it is taken as open")),
-                many => format!("{} valves have {status}; they are taken as open", many.len()).into(),
+                    .text(format!(" has {}; it is taken as open", status_said(&word))),
+                many => format!(
+                    "{} valves have {}; they are taken as open",
+                    many.len(),
+                    status_said(&word)
+                )
+                .into(),
             };
             self.report_together(Code::ValveStatusUnknown, Severity::Note, &features, said);
         }
-        Ok(states)
     }
 
     fn named_mains(&self, wanted: &ValvesColumns, mains: &[Main]) -> Result<Vec<Option<NamedMain>>, Error> {
@@ -141,6 +155,14 @@ impl Desk<'_> {
             })
         });
         Ok(named.collect())
+    }
+}
+
+fn status_said(word: &str) -> String {
+    if word.is_empty() {
+        "no status".to_string()
+    } else {
+        format!("the status `{word}`")
     }
 }
 

@@ -4,44 +4,37 @@ use super::{MainKind, NodeKind, ValveKind};
 use crate::layers::Cell;
 
 /// Rows whose status is one of these take no part, whatever the layer.
-pub(super) const NOT_IN_USE: &[&str] = &[
+const NOT_IN_USE: &[&str] = &["abd", "abn", "dead", "design", "designed", "future"];
+
+/// Words that say the same when more stands beside them: `AB - Abandoned`, `Retired 1998`.
+const NOT_IN_USE_AMONG_OTHERS: &[&str] = &[
     "abandoned",
     "abandon",
     "aband",
-    "abd",
-    "abn",
     "removed",
     "retired",
     "decommissioned",
     "disused",
-    "dead",
     "demolished",
     "out of service",
     "oos",
     "not in service",
     "out of use",
     "not in use",
+    "not active",
+    "not existing",
+    "not built",
+    "not installed",
     "proposed",
     "planned",
-    "design",
-    "designed",
-    "future",
-    "not built",
     "under construction",
     "inactive",
 ];
 
 /// Statuses of features that take part.
 const IN_USE: &[&str] = &[
-    "active",
     "act",
-    "in service",
-    "in use",
-    "existing",
     "exist",
-    "live",
-    "operational",
-    "operating",
     "as built",
     "installed",
     "current",
@@ -49,6 +42,37 @@ const IN_USE: &[&str] = &[
     "open",
     "yes",
     "is",
+];
+
+/// Words that say the same when more stands beside them.
+const IN_USE_AMONG_OTHERS: &[&str] = &[
+    "active",
+    "in service",
+    "in use",
+    "existing",
+    "live",
+    "operational",
+    "operating",
+];
+
+/// Beside these a word above says something else: `to be abandoned`, `planned replacement`.
+const TURNS_IT: &[&str] = &[
+    "not",
+    "never",
+    "no",
+    "non",
+    "un",
+    "to",
+    "for",
+    "will",
+    "if",
+    "or",
+    "abandonment",
+    "removal",
+    "replacement",
+    "retirement",
+    "decommissioning",
+    "demolition",
 ];
 
 /// What a status of a main, node, hydrant or customer says.
@@ -69,22 +93,107 @@ pub(super) fn plain(text: &str) -> String {
     words.join(" ")
 }
 
-/// What a status says about a feature's use.
+/// What a status says about a feature's use. A text that says two things is not understood.
 pub(super) fn use_of(text: &str) -> Use {
     let said = plain(text);
     if NOT_IN_USE.contains(&said.as_str()) {
-        Use::Gone
-    } else if IN_USE.contains(&said.as_str()) {
-        Use::Live
-    } else {
-        Use::Unknown
+        return Use::Gone;
     }
+    if IN_USE.contains(&said.as_str()) {
+        return Use::Live;
+    }
+    // `not in service` is taken out whole, before `in service` is looked for.
+    let (gone, rest) = without(&said, NOT_IN_USE_AMONG_OTHERS);
+    let (live, rest) = without(&rest, IN_USE_AMONG_OTHERS);
+    let turned = without(&rest, TURNS_IT).0;
+    match (gone, live, turned) {
+        (true, false, false) => Use::Gone,
+        (false, true, false) => Use::Live,
+        _ => Use::Unknown,
+    }
+}
+
+/// Whether any of some phrases stands in a plain text as whole words, and the text without them.
+fn without(said: &str, phrases: &[&str]) -> (bool, String) {
+    let before = format!(" {said} ");
+    let after = phrases.iter().fold(before.clone(), |text, phrase| {
+        text.replace(&format!(" {phrase} "), " | ")
+    });
+    (after != before, after.trim().to_string())
+}
+
+/// Whether any of some words stands in a plain text.
+fn has(said: &str, words: &[&str]) -> bool {
+    said.split(' ').any(|word| words.contains(&word))
+}
+
+/// The full name of a device that this version does not calculate, where a valve's kind says that it is one.
+fn device(said: &str) -> Option<&'static str> {
+    let has = |words: &[&str]| has(said, words);
+    if has(&["check", "nrv", "reflux", "cv", "backflow"]) || said.contains("non return") {
+        Some("check valve")
+    } else if has(&["prv", "reducing"]) {
+        Some("pressure reducing valve")
+    } else if has(&["psv", "sustaining"]) {
+        Some("pressure sustaining valve")
+    } else if has(&["fcv", "rate"]) || said.contains("flow control") {
+        Some("flow control valve")
+    } else if has(&["altitude"]) {
+        Some("altitude valve")
+    } else if has(&["throttle", "throttled", "throttling", "tcv"]) || said.contains("partly open") {
+        Some("partly open valve")
+    } else if has(&["regulating", "regulator", "control"]) {
+        Some("regulating valve")
+    } else if has(PUMPS) {
+        Some("pump")
+    } else {
+        None
+    }
+}
+
+const PUMPS: &[&str] = &["pump", "pumps", "booster", "boosters"];
+
+/// The same outside a layer of valves, where some of the words mean other things: a reducing tee is a fitting, and a pumping
+/// main is a main.
+pub(super) fn device_elsewhere(text: &str) -> Option<&'static str> {
+    let said = plain(text);
+    let is_pipe = has(
+        &said,
+        &[
+            "main",
+            "mains",
+            "pipe",
+            "line",
+            "pipeline",
+            "suction",
+            "discharge",
+            "delivery",
+        ],
+    );
+    if has(&said, PUMPS) || has(&said, &["pumping"]) && has(&said, &["station"]) {
+        return (!is_pipe).then_some("pump");
+    }
+    let is_valve = has(
+        &said,
+        &[
+            "valve",
+            "valves",
+            "station",
+            "regulator",
+            "prv",
+            "psv",
+            "fcv",
+            "tcv",
+            "nrv",
+        ],
+    );
+    device(&said).filter(|_| is_valve && !is_pipe)
 }
 
 /// What a main's kind says; `None` for a word that is not known. `Err` for what is never calculated: the reason.
 pub(super) fn main_kind(text: &str) -> Option<Result<MainKind, &'static str>> {
     let said = plain(text);
-    let has = |part: &[&str]| part.iter().any(|part| said.split(' ').any(|word| word == *part));
+    let has = |words: &[&str]| has(&said, words);
     if has(&["raw", "untreated", "reclaimed", "recycled", "rawwater"])
         || said.contains("non potable")
         || said == "nonpotable"
@@ -121,7 +230,7 @@ pub(super) fn main_kind(text: &str) -> Option<Result<MainKind, &'static str>> {
 /// What a node point's kind says; `None` for a word that is not known.
 pub(super) fn node_kind(text: &str) -> Option<NodeKind> {
     let said = plain(text);
-    let has = |part: &[&str]| part.iter().any(|part| said.split(' ').any(|word| word == *part));
+    let has = |words: &[&str]| has(&said, words);
     if has(&[
         "tank",
         "tanks",
@@ -159,9 +268,37 @@ pub(super) enum Valves {
     Unknown,
 }
 
+/// Words for valves that are open or shut and nothing else.
+const GATES: &[&str] = &[
+    "gate",
+    "gv",
+    "sluice",
+    "sv",
+    "butterfly",
+    "bfv",
+    "ball",
+    "plug",
+    "isolation",
+    "isolating",
+    "isolator",
+    "line",
+    "inline",
+    "stop",
+    "shutoff",
+    "stopcock",
+    "curb",
+    "tapping",
+    "hydrant",
+    "service",
+    "main",
+    "system",
+    "valve",
+];
+
 /// What a valve's kind says.
 pub(super) fn valve_kind(text: &str) -> Valves {
     let said = plain(text);
+<<<<<<< HEAD
     let has = |part: &[&str]| part.iter().any(|part| said.split(' ').any(|word| word == *part));
     let device = if has(&["check", "nrv", "reflux", "cv"]) || said.contains("non return") || has(&["backflow"]) {
         Some("check valve")
@@ -183,6 +320,10 @@ pub(super) fn valve_kind(text: &str) -> Valves {
         None
     };
     if let Some(device) = device {
+=======
+    let has = |words: &[&str]| has(&said, words);
+    if let Some(device) = device(&said) {
+>>>>>>> 1ee8dcb (wip)
         return Valves::NotYet(device);
     }
     if has(&["zone", "division", "boundary", "divide"]) {
@@ -193,31 +334,7 @@ pub(super) fn valve_kind(text: &str) -> Valves {
         || said.contains("wash out")
     {
         Valves::Known(ValveKind::OffLine)
-    } else if has(&[
-        "gate",
-        "gv",
-        "sluice",
-        "sv",
-        "butterfly",
-        "bfv",
-        "ball",
-        "plug",
-        "isolation",
-        "isolating",
-        "isolator",
-        "line",
-        "inline",
-        "stop",
-        "shutoff",
-        "stopcock",
-        "curb",
-        "tapping",
-        "hydrant",
-        "service",
-        "main",
-        "system",
-        "valve",
-    ]) {
+    } else if has(GATES) {
         Valves::Known(ValveKind::Gate)
     } else {
         Valves::Unknown
@@ -274,6 +391,59 @@ mod tests {
         assert_eq!(use_of("Out-of-Service"), Use::Gone);
         assert_eq!(use_of("In Service"), Use::Live);
         assert_eq!(use_of("purple"), Use::Unknown);
+        let gone = [
+            "Abandoned in place",
+            "AB - Abandoned",
+            "Retired 1998",
+            "Removed (2004)",
+            "taken out of service",
+            "NOT IN SERVICE",
+            "Not active",
+            "Proposed 2030",
+            "Planned",
+            "not built",
+            "dead",
+        ];
+        for text in gone {
+            assert_eq!(use_of(text), Use::Gone, "{text}");
+        }
+        for text in ["Active main", "A - In Service", "existing", "Live since 1998"] {
+            assert_eq!(use_of(text), Use::Live, "{text}");
+        }
+        // What says two things, or what will be, is not for the program to settle.
+        let doubtful = [
+            "to be abandoned",
+            "active, planned replacement",
+            "not abandoned",
+            "dead end",
+            "for removal",
+            "abandonedness",
+        ];
+        for text in doubtful {
+            assert_eq!(use_of(text), Use::Unknown, "{text}");
+        }
+    }
+
+    #[test]
+    fn devices_outside_a_layer_of_valves() {
+        assert_eq!(device_elsewhere("Booster Pump"), Some("pump"));
+        assert_eq!(device_elsewhere("pumping station"), Some("pump"));
+        assert_eq!(
+            device_elsewhere("Pressure Reducing Valve"),
+            Some("pressure reducing valve")
+        );
+        assert_eq!(device_elsewhere("PRV"), Some("pressure reducing valve"));
+        assert_eq!(device_elsewhere("check valve"), Some("check valve"));
+        for text in [
+            "reducing tee",
+            "reducer",
+            "pumping main",
+            "pump discharge line",
+            "control point",
+            "gate valve",
+        ] {
+            assert_eq!(device_elsewhere(text), None, "{text}");
+        }
     }
 
     #[test]

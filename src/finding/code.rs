@@ -156,6 +156,10 @@ codes! {
         "A demand is below zero."
         "It would feed water into the network; it is treated as zero."
         "Correct the value; a well belongs among the sources."
+    DemandMissing "demand-missing" Map Note
+        "Customers or nodes have no demand."
+        "They draw nothing in the calculation: pressures are shown too high where they do draw."
+        "Fill in the demand, or 0 where nothing is drawn."
     ElevationDoubtful "elevation-doubtful" Map Warning
         "An elevation stands far outside those of its neighbours."
         "Pressure is head less elevation: a wrong elevation is a wrong pressure, metre for metre."
@@ -167,6 +171,10 @@ codes! {
     MainsLeftOut "mains-left-out" Map Note
         "Mains are left out by a rule of the study."
         "They carry no water in the calculation."
+        "Check that the rule means what it leaves out."
+    PointsLeftOut "points-left-out" Map Note
+        "Nodes, hydrants, customers or valves are left out by a rule of the study."
+        "Their demands and heads are missing from the calculation, and nothing is said about them."
         "Check that the rule means what it leaves out."
     // ---- topology ----------------------------------------------------------------------------------------------
     MultipartMerged "multipart-merged" Map Note
@@ -242,8 +250,8 @@ codes! {
         "No fitting main lies within reach of a valve."
         "If it is closed, water is shown where none flows."
         "Move the valve onto its main, name the main in a column, or raise `reach_m`."
-    ValveOnJunction "valve-on-junction" Map Serious
-        "A closed valve stands where three or more mains meet, and does not say which one it shuts."
+    ValveOnNode "valve-on-node" Map Serious
+        "A closed valve stands where three or more mains meet, and does not say which one, or which side of one, it shuts."
         "Each choice gives another network; none was made, and the valve shuts nothing."
         "Name the main in the valve's `main` column, or move the valve onto it."
     ValveClosed "valve-closed" Map Note
@@ -255,8 +263,8 @@ codes! {
         "The valve was put on the nearest fitting main instead."
         "Correct the main's id."
     ValveStatusUnknown "valve-status-unknown" Map Note
-        "A valve's status is neither open nor closed in words the program knows."
-        "It is taken as open."
+        "A valve has no status, or one that is neither open nor closed in words the program knows."
+        "A zone valve is taken as closed, any other as open: either may be wrong."
         "Write `open` or `closed`."
     NodeOffMain "node-off-main" Map Warning
         "A node point with a demand or a known head lies on no main."

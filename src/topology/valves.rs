@@ -1,7 +1,7 @@
 //! Valves. A closed one cuts its main at its own point; an open one changes nothing.
 //!
 //! On a node of two mains it cuts between them. On a node of three or more it must name the main it shuts; without that
-//! nothing is cut, and it is said: each choice would give another network.
+//! nothing is cut, and it is said: each choice would give another network. So it is where the named main runs through.
 
 use super::ValvePlace;
 use super::cleaning::Work;
@@ -92,7 +92,7 @@ fn place_one(work: &mut Work, index: usize, at: Point) -> Option<ValvePlace> {
         .find(|other| other.distance_m <= touch_m && hit.distance_m <= touch_m)
         .copied();
     if let (None, Some(crossing)) = (named, crossing) {
-        on_junction(work, valve.origin, at, &[hit, crossing], 2);
+        at_meeting(work, valve.origin, at, &[hit, crossing], 2, None);
         return Some(ValvePlace::Unplaced);
     }
     Some(cut_line(work, hit))
@@ -189,7 +189,7 @@ fn on_node(
         2 => detach(work, hit.line, stop),
         _ if named && (first || last) => detach(work, hit.line, stop),
         arms => {
-            on_junction(work, valve, at, hits, arms);
+            at_meeting(work, valve, at, hits, arms, named.then_some(main));
             ValvePlace::Unplaced
         }
     }
@@ -241,11 +241,18 @@ fn detach(work: &mut Work, line: u32, stop: usize) -> ValvePlace {
     }
 }
 
-fn on_junction(work: &mut Work, valve: FeatureRef, at: Point, hits: &[Hit], mains: u32) {
-    let message = Sentence::new().feature(valve).text(format!(
-        " is closed and stands where {mains} mains meet; it was not said which one it shuts"
-    ));
-    let mut finding = Finding::new(Code::ValveOnJunction, message).on(valve).at(at);
+/// Says that a closed valve shuts nothing: it names no main, or one that runs through the node and could be shut on either side.
+fn at_meeting(work: &mut Work, valve: FeatureRef, at: Point, hits: &[Hit], mains: u32, through: Option<u32>) {
+    let message = Sentence::new()
+        .feature(valve)
+        .text(format!(" is closed and stands where {mains} mains meet; "));
+    let message = match through {
+        Some(main) => message
+            .feature(work.feature(main))
+            .text(", which it names, runs through: on which side it shuts is not known"),
+        None => message.text("it was not said which one it shuts"),
+    };
+    let mut finding = Finding::new(Code::ValveOnNode, message).on(valve).at(at);
     for hit in hits
         .iter()
         .filter(|hit| hit.distance_m <= hits[0].distance_m + ON_NODE_M)

@@ -322,6 +322,169 @@ fn rows_are_left_out_by_stated_rules_counted_and_listed() {
 }
 
 #[test]
+fn a_status_that_is_not_understood_is_a_warning_for_mains() {
+    let rows = [
+        json!({"id": "a", "status": "AB - Abandoned"}),
+        json!({"id": "b", "status": "to be abandoned"}),
+        json!({"id": "c", "status": "To be abandoned"}),
+        json!({"id": "d", "status": "S3"}),
+        json!({"id": "e", "status": "Active since 1990"}),
+    ];
+    let read = read_mains("status = \"status\"", &rows);
+    assert_eq!(named(&read, Code::MainsLeftOut), [["main a"]]);
+    assert_eq!(
+        named(&read, Code::ValueUnreadable),
+        [vec!["main b".to_string(), "main c".into()], vec!["main d".into()]]
+    );
+    let mut unread = read.findings.iter().filter(|found| found.code == Code::ValueUnreadable);
+    assert!(unread.all(|found| found.severity == Severity::Warning));
+}
+
+#[test]
+fn what_is_left_out_is_said_for_every_layer() {
+    let study = "[mains]\nfrom = \"m.geojson\"\n\
+        [nodes]\nfrom = \"n.geojson\"\nid = \"id\"\nstatus = \"s\"\n\
+        [hydrants]\nfrom = \"h.geojson\"\nid = \"id\"\nstatus = \"s\"\n\
+        [customers]\nfrom = \"c.geojson\"\nid = \"id\"\nleave_out = { s = \"x\" }\n\
+        [valves]\nfrom = \"v.geojson\"\nid = \"id\"\nstatus = \"s\"";
+    let layer = |word: &str| points(&[json!({"id": 1, "s": word}), json!({"id": 2, "s": "open"})]);
+    let layers = [
+        ("m.geojson", mains(&[json!({}), json!({})])),
+        ("n.geojson", layer("removed")),
+        ("h.geojson", layer("Removed 2004")),
+        ("c.geojson", layer("x")),
+        ("v.geojson", layer("abandoned")),
+    ];
+    let read = read(study, &layers).unwrap();
+    assert_eq!(
+        named(&read, Code::PointsLeftOut),
+        [["node 1"], ["hydrant 1"], ["customer 1"], ["valve 1"]]
+    );
+}
+
+#[test]
+fn devices_among_nodes_and_mains_are_refused_by_id() {
+    let study = "[mains]\nfrom = \"m.geojson\"\nid = \"id\"\nkind = \"kind\"\n[nodes]\nfrom = \"n.geojson\"\nid = \"id\"\nkind = \"kind\"";
+    let layers = |main: &str, node: &str| {
+        [
+            ("m.geojson", mains(&[json!({"id": "M1", "kind": main})])),
+            ("n.geojson", points(&[json!({"id": "N1", "kind": node})])),
+        ]
+    };
+    for (main, node, wanted) in [
+        (
+            "distribution",
+            "Booster pump",
+            "node N1 is a pump (`kind` is Booster pump)",
+        ),
+        (
+            "distribution",
+            "Pressure reducing valve",
+            "node N1 is a pressure reducing valve",
+        ),
+        ("PUMP", "tee", "main M1 is a pump"),
+    ] {
+        let said = error(study, &layers(main, node));
+        assert!(said.contains(wanted) && said.contains("leave_out"), "{said}");
+    }
+    assert!(read(study, &layers("pumping main", "reducing tee")).is_ok());
+}
+
+#[test]
+fn demands_that_are_missing_are_counted_and_said() {
+    let study = |demand: &str| {
+        format!(
+            "[mains]\nfrom = \"m.geojson\"\n[nodes]\nfrom = \"n.geojson\"\ndemand = \"q_lps\"\n[customers]\nfrom = \"c.geojson\"\n{demand}"
+        )
+    };
+    let layers = |missing: usize| {
+        let rows: Vec<Value> = (0..20)
+            .map(|row| json!({"q_lps": if row < missing { json!(null) } else { json!(0.1) }}))
+            .collect();
+        [
+            ("m.geojson", mains(&[json!({}), json!({})])),
+            ("n.geojson", points(&[json!({"q_lps": null}), json!({"q_lps": 0})])),
+            ("c.geojson", points(&rows)),
+        ]
+    };
+    let found = |demand: &str, missing: usize| -> Vec<(usize, Severity)> {
+        let read = read(&study(demand), &layers(missing)).unwrap();
+        let found = read.findings.iter().filter(|found| found.code == Code::DemandMissing);
+        found.map(|found| (1 + found.others.len(), found.severity)).collect()
+    };
+    let given = "demand = \"q_lps\"";
+    assert_eq!(found(given, 0), [(1, Severity::Note)]);
+    assert_eq!(found(given, 2), [(1, Severity::Note), (2, Severity::Note)]);
+    assert_eq!(found(given, 3), [(1, Severity::Note), (3, Severity::Warning)]);
+    assert_eq!(found("", 0), [(1, Severity::Note), (20, Severity::Warning)]);
+}
+
+#[test]
+fn stored_lengths_that_no_main_has_do_not_count() {
+    let rows = [
+        json!({"id": "a", "len_m": 1e-300}),
+        json!({"id": "b", "len_m": 0.0009}),
+        json!({"id": "c", "len_m": 100}),
+        json!({"id": "d", "len_m": -100}),
+        json!({"id": "e", "len_m": "1e999"}),
+    ];
+    let read = read_mains("length = \"len_m\"\nlength_from = \"stored\"", &rows);
+    assert_eq!(
+        named(&read, Code::LengthDisagrees),
+        [["main a"], ["main b"], ["main d"]]
+    );
+    assert_eq!(named(&read, Code::ValueUnreadable), [["main e"]]);
+    let stored = read.value.assets.mains.iter().map(|main| main.stored_length_m);
+    assert_eq!(stored.collect::<Vec<_>>(), [None, None, Some(100.0), None, None]);
+}
+
+#[test]
+fn a_zone_valve_without_a_status_is_shut_and_said() {
+    let study = |status: &str| {
+        format!("[mains]\nfrom = \"m.geojson\"\n[valves]\nfrom = \"v.geojson\"\nid = \"id\"\nkind = \"kind\"\n{status}")
+    };
+    let rows = [
+        json!({"id": "Z1", "kind": "zone valve", "status": null}),
+        json!({"id": "Z2", "kind": "zone valve", "status": "odd"}),
+        json!({"id": "Z3", "kind": "zone valve", "status": "open"}),
+        json!({"id": "G1", "kind": "gate", "status": null}),
+        json!({"id": "A1", "kind": "air valve", "status": null}),
+    ];
+    let layers = [
+        ("m.geojson", mains(&[json!({}), json!({})])),
+        ("v.geojson", points(&rows)),
+    ];
+    let with_column = read(&study("status = \"status\""), &layers).unwrap();
+    let without = read(&study(""), &layers).unwrap();
+    let shut = |read: &Checked<Reading>| -> Vec<bool> {
+        let valves = read.value.assets.valves.iter();
+        valves.map(|valve| valve.closed.value).collect()
+    };
+    let told = |read: &Checked<Reading>, severity: Severity| -> usize {
+        let of = |found: &&Finding| found.code == Code::ValveStatusUnknown && found.severity == severity;
+        read.findings.iter().filter(of).count()
+    };
+    assert_eq!(shut(&with_column), [true, true, false, false, false]);
+    assert_eq!(with_column.value.assets.valves[0].closed.basis, Basis::Assumed);
+    assert_eq!(
+        named(&with_column, Code::ValveStatusUnknown),
+        [["valve Z1"], ["valve Z2"], ["valve G1"]]
+    );
+    assert_eq!(
+        (
+            told(&with_column, Severity::Warning),
+            told(&with_column, Severity::Note)
+        ),
+        (2, 1)
+    );
+    assert_eq!(shut(&without), [true, true, true, false, false]);
+    assert_eq!(
+        (told(&without, Severity::Warning), told(&without, Severity::Note)),
+        (3, 1)
+    );
+}
+
+#[test]
 fn ids_that_repeat_or_are_missing_are_found() {
     let rows = [
         json!({"id": "x"}),

@@ -58,7 +58,7 @@ fn closed_valves(town: &mut Town, lcg: &mut Lcg) {
             town,
             "valves",
             valve,
-            ["closed valve on a three-way node", "valve-on-junction"],
+            ["closed valve on a three-way node", "valve-on-node"],
             names.join(" "),
             "names no main",
         );

@@ -80,12 +80,12 @@ fn a_closed_valve_on_a_node_of_two_mains_cuts_between_them() {
 }
 
 #[test]
-fn a_closed_valve_on_a_junction_must_name_its_main() {
+fn a_closed_valve_on_a_node_of_three_must_name_its_main() {
     let mut board = Board::new(0.3);
     let [west, east, north] = street(&mut board);
     let valve = board.closed_valve([100.0, 0.0]);
     let seen = board.infer();
-    assert_eq!(seen.codes(), ["valve-on-junction"]);
+    assert_eq!(seen.codes(), ["valve-on-node"]);
     assert_eq!(seen.map().valves[0], Some(ValvePlace::Unplaced));
     board.names(valve, NamedMain::Known(vec![north]));
     let seen = board.infer();
@@ -98,6 +98,23 @@ fn a_closed_valve_on_a_junction_must_name_its_main() {
     let part = seen.map().parts.iter().find(|part| part.main == north).unwrap();
     assert_eq!(part.from, node_b);
     assert_ne!(node_a, node_b);
+}
+
+#[test]
+fn a_closed_valve_whose_main_runs_through_a_node_does_not_say_its_side() {
+    let mut board = Board::new(0.3);
+    let through = board.main(&[[0.0, 0.0], [100.0, 0.0], [200.0, 0.0]]);
+    board.main(&[[100.0, 0.0], [100.0, 50.0]]);
+    let valve = board.closed_valve([100.0, 0.0]);
+    board.names(valve, NamedMain::Known(vec![through]));
+    let seen = board.infer();
+    assert_eq!(seen.codes(), ["valve-on-node"]);
+    assert_eq!(seen.map().valves[0], Some(ValvePlace::Unplaced));
+    let said = format!("{:?}", seen.findings()[0].message);
+    assert!(
+        said.contains("runs through") && !said.contains("was not said"),
+        "{said}"
+    );
 }
 
 #[test]
