@@ -43,8 +43,11 @@ pub(super) fn compare(work: &mut Work) -> u32 {
     let exact = exact_contacts(work);
     let mut touching = exact.clone();
     for middle in &work.web.middles {
-        if let Some(end) = work.web.ends(middle.spot).next() {
-            touching.union(end.line(), middle.line);
+        let end = work.web.ends(middle.spot).map(End::line).next();
+        // Where no end lies the spot was made for two middles.
+        let other = end.or_else(|| work.web.middles_of_spot(middle.spot).map(|m| m.line).next());
+        if let Some(other) = other {
+            touching.union(other, middle.line);
         }
     }
     unite_classes(&work.web, &mut touching);

@@ -33,8 +33,8 @@ fn touch(work: &mut Work, spot: u32, hit: Hit) -> bool {
             return !work.web.same(spot, there) && unite(work, spot, there);
         }
     }
-    if runs_over_neighbour(work, spot, hit) {
-        return false;
+    if let Some(over) = runs_over(work, spot, hit) {
+        return meet_where_they_part(work, hit.line, over);
     }
     let (zone, line_zone) = (work.web.zone(spot), work.zone_of_line(hit.line));
     let place = work.lines.place(hit.line, hit.s);
@@ -69,23 +69,73 @@ fn unite(work: &mut Work, a: u32, b: u32) -> bool {
     true
 }
 
-/// Whether a single end lies on its neighbour's line only because it runs past the spot where that neighbour starts:
-/// an overshoot along a straight street, not a tee.
-fn runs_over_neighbour(work: &Work, spot: u32, hit: Hit) -> bool {
+/// Where a main that runs on along another came upon it.
+struct Over {
+    /// The main's line and metres along it.
+    line: u32,
+    s: f64,
+    /// Metres along the other.
+    other_s: f64,
+}
+
+/// Whether a single end lies on another line only because its main runs past the vertex where it meets that line, and on
+/// along it: an overshoot along a straight street, not a tee.
+fn runs_over(work: &Work, spot: u32, hit: Hit) -> Option<Over> {
     let mut ends = work.web.ends(spot);
     let (Some(end), None) = (ends.next(), ends.next()) else {
+        return None;
+    };
+    if end.line() == hit.line {
+        return None;
+    }
+    let (touch_m, longest_tail_m) = (work.settings.touch_m, work.settings.tolerance_m);
+    let (vertices, along) = (work.lines.vertices(hit.line), work.lines.along_m(hit.line));
+    let near = |s: f64| (s - hit.s).abs() <= longest_tail_m + touch_m;
+    let first = along.partition_point(|&s| s < hit.s - longest_tail_m - touch_m);
+    let passed = (first..vertices.len()).take_while(|&i| near(along[i])).filter_map(|i| {
+        let own = work.lines.nearest(end.line(), vertices[i]);
+        let tail_m = work.lines.to_end_m(end, own.s);
+        let over = own.distance_m <= touch_m
+            && (touch_m..=longest_tail_m).contains(&tail_m)
+            && work.lines.to_end_m(end.other(), own.s) > touch_m;
+        over.then_some((tail_m, own.s, along[i]))
+    });
+    let farthest = passed.max_by(|a, b| a.0.total_cmp(&b.0));
+    farthest.map(|(_, s, other_s)| Over {
+        line: end.line(),
+        s,
+        other_s,
+    })
+}
+
+/// Joins two lines at the place where one came upon the other; the tail is trimmed as that of any overshoot.
+fn meet_where_they_part(work: &mut Work, other: u32, over: Over) -> bool {
+    let place = work.lines.place(over.line, over.s);
+    let end = [false, true].map(|last| End::new(other, last));
+    let at_end = end
+        .into_iter()
+        .find(|&end| work.lines.to_end_m(end, over.other_s) <= work.settings.touch_m);
+    // The other line's own end touches this one there, and is joined when its turn comes.
+    if at_end.is_some() {
+        return false;
+    }
+    let zones = (work.zone_of_line(over.line), work.zone_of_line(other));
+    let Some(zone) = work.zone_together(zones.0, zones.1, place) else {
+        work.keep_apart(vec![over.line], vec![other], place, place);
         return false;
     };
-    let longest_tail_m = work.settings.tolerance_m;
-    [false, true].into_iter().any(|last| {
-        let start = End::new(hit.line, last);
-        if end.line() == hit.line || work.lines.to_end_m(start, hit.s) > longest_tail_m {
-            return false;
-        }
-        let own = work.lines.nearest(end.line(), work.lines.end_at(start));
-        let tail_m = work.lines.to_end_m(end, own.s);
-        own.distance_m <= work.settings.touch_m
-            && (work.settings.touch_m..=longest_tail_m).contains(&tail_m)
-            && work.lines.to_end_m(end.other(), own.s) > work.settings.touch_m
-    })
+    let spot = work.web.new_spot(place);
+    for (line, s) in [(over.line, over.s), (other, over.other_s)] {
+        let middle = Middle {
+            spot,
+            line,
+            s,
+            at: place,
+            distance_m: 0.0,
+            kind: JoinKind::EndOnMiddle,
+            ends_here: false,
+        };
+        work.web.attach(middle, zone, work.settings.touch_m);
+    }
+    true
 }

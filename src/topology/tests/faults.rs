@@ -421,6 +421,20 @@ fn an_overshoot_within_the_tolerance_is_joined_where_the_two_meet() {
 }
 
 #[test]
+fn an_overshoot_along_a_main_that_turns_off_there_is_trimmed() {
+    let mut board = Board::new(1.0);
+    // The other main comes from the south and turns west, where this one comes from the east.
+    let turning = board.main(&[[0.0, -100.0], [0.0, 0.0], [-100.0, 0.0]]);
+    let over = board.main(&[[100.0, 0.0], [-0.6, 0.0]]);
+    let seen = board.infer();
+    assert_eq!(seen.codes(), ["overshoot"], "{:?}", seen.findings());
+    assert_eq!(seen.finding(Code::Overshoot).feature.unwrap().row, over);
+    assert!(seen.joined(turning, over));
+    assert_eq!((seen.parts_of(turning), seen.parts_of(over)), (2, 1));
+    assert!(seen.map().nodes.iter().any(|node| node.at == [0.0, 0.0]));
+}
+
+#[test]
 fn an_overshoot_beyond_the_tolerance_is_a_crossing_with_its_tail() {
     let mut board = Board::new(1.0);
     let through = board.main(&[[0.0, 0.0], [100.0, 0.0]]);

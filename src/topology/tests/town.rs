@@ -62,6 +62,8 @@ pub struct Plan {
     pub turn: f64,
     /// Coordinates are rounded to this, m; 0 for not at all.
     pub rounded_m: f64,
+    /// Whether the streets are straight and at right angles.
+    pub square: bool,
     /// Whether a node point stands on every true node.
     pub node_points: bool,
 }
@@ -74,6 +76,7 @@ impl Plan {
             faults,
             turn,
             rounded_m: 0.0,
+            square: false,
             node_points: false,
         }
     }
@@ -106,7 +109,11 @@ pub fn build(plan: Plan) -> Town {
     let corner = |i: usize, j: usize| i * size + j;
     for i in 0..size {
         for j in 0..size {
-            let (dx, dy) = (chance.within(-12.0, 12.0), chance.within(-12.0, 12.0));
+            let crooked_m = if plan.square { 0.0 } else { 12.0 };
+            let (dx, dy) = (
+                chance.within(-crooked_m, crooked_m),
+                chance.within(-crooked_m, crooked_m),
+            );
             places.push([i as f64 * SPACING_M + dx, j as f64 * SPACING_M + dy]);
         }
     }
@@ -127,7 +134,7 @@ pub fn build(plan: Plan) -> Town {
                 let (a, b) = (corner(i, j), corner(u, v));
                 let (p, q) = (places[a], places[b]);
                 let mut vertices = vec![p];
-                if chance.share() < 0.5 {
+                if chance.share() < 0.5 && !plan.square {
                     let middle = [(p[0] + q[0]) / 2.0, (p[1] + q[1]) / 2.0];
                     vertices.push(offset(middle, chance.within(-6.0, 6.0), chance.within(-6.0, 6.0)));
                 }
@@ -621,5 +628,13 @@ fn node_points_on_the_true_nodes_make_no_difference() {
         node_points: true,
         rounded_m: 0.001,
         ..Plan::new(seed, 10, 22, seed as f64 * 0.1)
+    }));
+}
+
+#[test]
+fn straight_streets_at_right_angles_make_no_difference() {
+    judge_all(seeds(3000).map(|seed| Plan {
+        square: true,
+        ..Plan::new(seed, 10, 22, 0.0)
     }));
 }
