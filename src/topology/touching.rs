@@ -110,7 +110,7 @@ fn runs_over(work: &Work, spot: u32, hit: Hit) -> Option<Over> {
 
 /// Joins two lines at the place where one came upon the other; the tail is trimmed as that of any overshoot.
 fn meet_where_they_part(work: &mut Work, other: u32, over: Over) -> bool {
-    let place = work.lines.place(over.line, over.s);
+    let place = work.lines.place(other, over.other_s);
     let end = [false, true].map(|last| End::new(other, last));
     let at_end = end
         .into_iter()
