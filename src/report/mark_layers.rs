@@ -11,6 +11,9 @@ use crate::layers::{OutputDir, Table, write_marked};
 use crate::network::{Friction, NodeIx};
 use crate::screening::{Flag, HydrantVerdict, LimitBy, PartVerdict, Verdict};
 
+/// Stems of the columns that belong to one law of friction or the other.
+pub(super) const FRICTION: [&str; 2] = ["used_c", "rough"];
+
 /// Writes every layer that results go back onto. Renamed columns come back as findings.
 pub(super) fn write(report: &Report<'_>, out: &mut OutputDir<'_>) -> Result<Vec<Finding>, Error> {
     let mut findings = Vec::new();
@@ -84,7 +87,7 @@ fn mains(report: &Report<'_>, layer: u16, rows: u32) -> Table {
             None => push_main_without_parts(&mut table, "left out"),
         }
     }
-    table.into_table()
+    table.into_table_without_blank(&FRICTION, MAINS)
 }
 
 fn push_main_without_parts(table: &mut Rows, served: &str) {

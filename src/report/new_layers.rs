@@ -4,7 +4,7 @@ use std::collections::HashMap;
 use std::f64::consts::PI;
 
 use super::labels::Labels;
-use super::mark_layers::{case_name, friction_entries};
+use super::mark_layers::{FRICTION, case_name, friction_entries};
 use super::rows::{Entry, Rows};
 use super::{Report, Words};
 use crate::assets::{Assets, Drawing, Point, ValveKind};
@@ -146,7 +146,7 @@ fn parts(report: &Report<'_>) -> Table {
             verdict.velocity.value.into(),
         ]);
     }
-    table.into_table()
+    table.into_table_without_blank(&FRICTION, PARTS)
 }
 
 fn nodes(report: &Report<'_>) -> Table {

@@ -91,4 +91,15 @@ impl Rows {
     pub fn into_table(self) -> Table {
         self.table
     }
+
+    /// The table without those of these columns that are blank in every row: a law that no main follows has no column.
+    pub fn into_table_without_blank(mut self, stems: &[&str], columns: &[ResultColumn]) -> Table {
+        for at in (0..columns.len()).rev().filter(|at| stems.contains(&columns[*at].stem)) {
+            if self.table.columns[at].iter().all(|cell| *cell == Cell::Null) {
+                self.table.columns.remove(at);
+                self.table.fields.remove(at);
+            }
+        }
+        self.table
+    }
 }
