@@ -298,32 +298,8 @@ const GATES: &[&str] = &[
 /// What a valve's kind says.
 pub(super) fn valve_kind(text: &str) -> Valves {
     let said = plain(text);
-<<<<<<< HEAD
-    let has = |part: &[&str]| part.iter().any(|part| said.split(' ').any(|word| word == *part));
-    let device = if has(&["check", "nrv", "reflux", "cv"]) || said.contains("non return") || has(&["backflow"]) {
-        Some("check valve")
-    } else if has(&["prv", "reducing"]) {
-        Some("pressure reducing valve")
-    } else if has(&["psv", "sustaining"]) {
-        Some("pressure sustaining valve")
-    } else if has(&["fcv", "rate"]) || said.contains("flow control") {
-        Some("flow control valve")
-    } else if has(&["altitude"]) {
-        Some("altitude valve")
-    } else if has(&["throttle", "throttled", "throttling"]) || said.contains("partly open") {
-        Some("partly open valve")
-    } else if has(&["regulating", "regulator", "control"]) {
-        Some("regulating valve")
-    } else if has(&["pump", "booster"]) {
-        Some("pump")
-    } else {
-        None
-    };
-    if let Some(device) = device {
-=======
     let has = |words: &[&str]| has(&said, words);
     if let Some(device) = device(&said) {
->>>>>>> 1ee8dcb (wip)
         return Valves::NotYet(device);
     }
     if has(&["zone", "division", "boundary", "divide"]) {
