@@ -50,6 +50,21 @@ static NO_ROWS: Column = Column {
 };
 
 impl<'a> Desk<'a> {
+    /// A desk with nothing on it.
+    pub fn new(set: &'a LayerSet, plane: &'a LocalPlane) -> Desk<'a> {
+        Desk {
+            set,
+            plane,
+            findings: Vec::new(),
+            names: Names::default(),
+            units: Vec::new(),
+            fillers: Vec::new(),
+            left_out: Vec::new(),
+            zones: Interned::default(),
+            classes: Interned::default(),
+        }
+    }
+
     /// The layer of an index.
     pub fn layer(&self, index: u16) -> &'a Layer {
         &self.set.layers[usize::from(index)]

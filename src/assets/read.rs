@@ -4,7 +4,7 @@ use std::path::Path;
 
 use super::desk::Desk;
 use super::settings::AssetSettings;
-use super::{Assets, Names, Point, Reading, customers, hydrants, mains, nodes, supply, valves};
+use super::{Assets, Point, Reading, customers, hydrants, mains, nodes, supply, valves};
 use crate::finding::{Checked, Error};
 use crate::layers::{Layer, LayerSet, LocalPlane};
 
@@ -54,64 +54,58 @@ pub fn read(
     plane: &LocalPlane,
     study: &Path,
 ) -> Result<Checked<Reading>, Error> {
-    let mut desk = Desk {
-        set,
-        plane,
-        findings: Vec::new(),
-        names: Names::default(),
-        units: Vec::new(),
-        fillers: Vec::new(),
-        left_out: Vec::new(),
-        zones: Default::default(),
-        classes: Default::default(),
-    };
+    let mut desk = Desk::new(set, plane);
     check_places(&desk, settings)?;
-    let (mut mains, mut left_out) = (Vec::new(), Vec::new());
-    for layer in &settings.mains {
-        let (read, out) = desk.read_mains(layer, settings)?;
-        mains.extend(read);
-        left_out.extend(out);
-    }
-    let mut nodes = Vec::new();
-    for layer in &settings.nodes {
-        nodes.extend(desk.read_nodes(layer, settings)?);
-    }
-    let mut hydrants = Vec::new();
-    for layer in &settings.hydrants {
-        hydrants.extend(desk.read_hydrants(layer, settings.hydrants_at_own_elevation)?);
-    }
-    let mut customers = Vec::new();
-    for layer in &settings.customers {
-        customers.extend(desk.read_customers(layer)?);
-    }
-    let mut valves = Vec::new();
-    for layer in &settings.valves {
-        valves.extend(desk.read_valves(layer, &mains)?);
-    }
-    desk.add_sources(settings, study, &mains, &mut nodes)?;
+    let mut assets = read_layers(&mut desk, settings)?;
+    desk.add_sources(settings, study, &assets.mains, &mut assets.nodes)?;
     desk.say_left_out();
-    let assets = Assets {
-        mains,
-        left_out,
-        nodes,
-        hydrants,
-        customers,
-        valves,
-        zones: desk.zones.texts,
-        classes: desk.classes.texts,
-        reach: settings.reach,
-    };
-    let (names, units, fillers, left_out) = (desk.names, desk.units, desk.fillers, desk.left_out);
+    assets.zones = desk.zones.texts;
+    assets.classes = desk.classes.texts;
     Ok(Checked {
         value: Reading {
             assets,
-            names,
-            units,
-            fillers,
-            left_out,
+            names: desk.names,
+            units: desk.units,
+            fillers: desk.fillers,
+            left_out: desk.left_out,
         },
         findings: desk.findings,
     })
+}
+
+/// Reads every layer in turn. The names of zones and classes are still at the desk.
+fn read_layers(desk: &mut Desk<'_>, settings: &AssetSettings) -> Result<Assets, Error> {
+    let mut assets = Assets {
+        mains: Vec::new(),
+        left_out: Vec::new(),
+        nodes: Vec::new(),
+        hydrants: Vec::new(),
+        customers: Vec::new(),
+        valves: Vec::new(),
+        zones: Vec::new(),
+        classes: Vec::new(),
+        reach: settings.reach,
+    };
+    for layer in &settings.mains {
+        let (read, out) = desk.read_mains(layer, settings)?;
+        assets.mains.extend(read);
+        assets.left_out.extend(out);
+    }
+    for layer in &settings.nodes {
+        assets.nodes.extend(desk.read_nodes(layer, settings)?);
+    }
+    for layer in &settings.hydrants {
+        let read = desk.read_hydrants(layer, settings.hydrants_at_own_elevation)?;
+        assets.hydrants.extend(read);
+    }
+    for layer in &settings.customers {
+        assets.customers.extend(desk.read_customers(layer)?);
+    }
+    for layer in &settings.valves {
+        let read = desk.read_valves(layer, &assets.mains)?;
+        assets.valves.extend(read);
+    }
+    Ok(assets)
 }
 
 /// Stops when a layer lies nowhere near the mains: joined to nothing, it would only look like a thousand faults of the map.

@@ -64,52 +64,45 @@ impl Desk<'_> {
         let named_mains: Vec<usize> = (0..mains.len())
             .filter(|at| self.names.id(mains[*at].origin) == Some(id))
             .collect();
-        let wrong = |what: String, todo: String| Err(Error::study(study, what, todo));
         match (named.as_slice(), named_mains.as_slice()) {
-            ([], []) => {
-                let ids = nodes
-                    .iter()
-                    .filter_map(|node| node.origin)
-                    .chain(mains.iter().map(|main| main.origin));
-                let ids = ids.filter_map(|origin| self.names.id(origin));
-                let todo = match nearest(id, ids) {
-                    Some(nearest) => format!("The nearest id is `{nearest}`."),
-                    None => "Give a node's or a main's id as the map spells it, or a point `[x, y]`.".to_string(),
-                };
-                wrong(
-                    format!("`at = \"{id}\"` of a source is no id of a node or a main"),
-                    todo,
-                )
-            }
-            ([one], _) => {
-                let node = &mut nodes[*one];
-                let Some(at) = node.at else {
-                    return wrong(
-                        format!("the node {id}, where a source is to stand, is not drawn"),
-                        "Give the point `[x, y]` instead.".to_string(),
-                    );
-                };
-                node.head_m = None;
-                Ok((
-                    at,
-                    if node.kind == NodeKind::Tank {
-                        NodeKind::Tank
-                    } else {
-                        NodeKind::Source
-                    },
-                ))
-            }
+            ([], []) => Err(self.no_such_id(study, id, mains, nodes)),
+            ([one], _) => place_of_node(study, id, &mut nodes[*one]),
             ([], [one]) => match free_end(mains, *one) {
                 Some(at) => Ok((at, NodeKind::Source)),
-                None => wrong(
-                    format!("the main {id}, where a source is to stand, is not drawn"),
-                    "Give the point `[x, y]` instead.".to_string(),
-                ),
+                None => Err(not_drawn(study, id, Role::Main)),
             },
             ([], several) => repeated(study, id, several.len(), Role::Main),
             (several, _) => repeated(study, id, several.len(), Role::Node),
         }
     }
+
+    fn no_such_id(&self, study: &Path, id: &str, mains: &[Main], nodes: &[NodePoint]) -> Error {
+        let origins = nodes.iter().filter_map(|node| node.origin);
+        let origins = origins.chain(mains.iter().map(|main| main.origin));
+        let ids = origins.filter_map(|origin| self.names.id(origin));
+        let todo = match nearest(id, ids) {
+            Some(nearest) => format!("The nearest id is `{nearest}`."),
+            None => "Give a node's or a main's id as the map spells it, or a point `[x, y]`.".to_string(),
+        };
+        let what = format!("`at = \"{id}\"` of a source is no id of a node or a main");
+        Error::study(study, what, todo)
+    }
+}
+
+/// The place of a node that a source is to stand on. Its own head, if it has one, counts no longer.
+fn place_of_node(study: &Path, id: &str, node: &mut NodePoint) -> Result<(Point, NodeKind), Error> {
+    let at = node.at.ok_or_else(|| not_drawn(study, id, Role::Node))?;
+    node.head_m = None;
+    let kind = match node.kind {
+        NodeKind::Tank => NodeKind::Tank,
+        _ => NodeKind::Source,
+    };
+    Ok((at, kind))
+}
+
+fn not_drawn(study: &Path, id: &str, role: Role) -> Error {
+    let what = format!("the {} {id}, where a source is to stand, is not drawn", role.word());
+    Error::study(study, what, "Give the point `[x, y]` instead.")
 }
 
 fn repeated<T>(study: &Path, id: &str, count: usize, role: Role) -> Result<T, Error> {

@@ -140,7 +140,7 @@ fn device(said: &str) -> Option<&'static str> {
         Some("flow control valve")
     } else if has(&["altitude"]) {
         Some("altitude valve")
-    } else if has(&["throttle", "throttled", "throttling", "tcv"]) || said.contains("partly open") {
+    } else if has(&["throttle", "throttled", "throttling"]) || said.contains("partly open") {
         Some("partly open valve")
     } else if has(&["regulating", "regulator", "control"]) {
         Some("regulating valve")
@@ -175,17 +175,7 @@ pub(super) fn device_elsewhere(text: &str) -> Option<&'static str> {
     }
     let is_valve = has(
         &said,
-        &[
-            "valve",
-            "valves",
-            "station",
-            "regulator",
-            "prv",
-            "psv",
-            "fcv",
-            "tcv",
-            "nrv",
-        ],
+        &["valve", "valves", "station", "regulator", "prv", "psv", "fcv", "nrv"],
     );
     device(&said).filter(|_| is_valve && !is_pipe)
 }

@@ -1,10 +1,13 @@
 //! The study file, and the whole job it asks for: read, calculate, write.
 
 mod docs;
+mod file;
 mod keys;
 mod run;
+mod section;
 mod settings;
 mod tables;
+mod values;
 
 pub use docs::study_file_page;
 pub use run::{Outcome, RunOptions, Worked, run, run_and_write};

@@ -3,7 +3,8 @@
 use std::path::Path;
 use std::time::{SystemTime, UNIX_EPOCH};
 
-use super::keys::{Section, StudyFile};
+use super::file::StudyFile;
+use super::section::Section;
 use super::{CaseSettings, LayerFile, Study, tables};
 use crate::assets::{
     AssetSettings, Basis, CustomersColumns, DiameterIs, FrictionLaw, HydrantsColumns, LayerColumns, LengthFrom,
@@ -55,27 +56,7 @@ pub(super) fn parse(path: &Path, text: &str) -> Result<Study, Error> {
         folder: path.parent().unwrap_or(Path::new("")),
         files: Vec::new(),
     };
-    let mut assets = AssetSettings {
-        mains: read_mains(&top, &mut layers, law)?,
-        nodes: read_nodes(&top, &mut layers)?,
-        hydrants: Vec::new(),
-        customers: Vec::new(),
-        valves: Vec::new(),
-        sources: sources(&top)?,
-        heads_by_case: Vec::new(),
-        law,
-        default_c_factor: or_assumed(friction.plain("default_c", 20.0..=165.0)?, DEFAULT_C),
-        default_roughness_m: or_assumed(
-            friction.number("default_roughness", 0.0..=30.0 * M_PER_MM)?,
-            DEFAULT_ROUGHNESS_M,
-        ),
-        age_in_year: age_in_year(&friction)?,
-        hydrants_at_own_elevation: true,
-        reach: DEFAULT_REACH,
-    };
-    (assets.hydrants, assets.reach.hydrants_m) = read_hydrants(&top, &mut layers)?;
-    (assets.customers, assets.reach.customers_m) = read_customers(&top, &mut layers)?;
-    (assets.valves, assets.reach.valves_m) = read_valves(&top, &mut layers)?;
+    let mut assets = asset_settings(&top, &friction, &mut layers, law)?;
     let joining = joining(&top.section("joining", &empty)?)?;
     let limits = limits(&top.section("limits", &empty)?, &Limits::default())?;
     let cases = cases(&top, &limits)?;
@@ -99,6 +80,37 @@ pub(super) fn parse(path: &Path, text: &str) -> Result<Study, Error> {
         limits,
         used: file.into_used(),
     })
+}
+
+/// What the study says about the layers, and the friction of mains about which they say nothing.
+fn asset_settings(
+    top: &Section<'_>,
+    friction: &Section<'_>,
+    layers: &mut Layers<'_>,
+    law: FrictionLaw,
+) -> Result<AssetSettings, Error> {
+    let mut assets = AssetSettings {
+        mains: read_mains(top, layers, law)?,
+        nodes: read_nodes(top, layers)?,
+        hydrants: Vec::new(),
+        customers: Vec::new(),
+        valves: Vec::new(),
+        sources: sources(top)?,
+        heads_by_case: Vec::new(),
+        law,
+        default_c_factor: or_assumed(friction.plain("default_c", 20.0..=165.0)?, DEFAULT_C),
+        default_roughness_m: or_assumed(
+            friction.number("default_roughness", 0.0..=30.0 * M_PER_MM)?,
+            DEFAULT_ROUGHNESS_M,
+        ),
+        age_in_year: age_in_year(friction)?,
+        hydrants_at_own_elevation: true,
+        reach: DEFAULT_REACH,
+    };
+    (assets.hydrants, assets.reach.hydrants_m) = read_hydrants(top, layers)?;
+    (assets.customers, assets.reach.customers_m) = read_customers(top, layers)?;
+    (assets.valves, assets.reach.valves_m) = read_valves(top, layers)?;
+    Ok(assets)
 }
 
 fn or_assumed(given: Option<f64>, usual: f64) -> Valued<f64> {

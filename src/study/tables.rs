@@ -30,7 +30,9 @@ const STATUS: Key = key(
     "status",
     Takes::Column,
     "",
-    "Column of the status. Rows that are abandoned, removed, retired, out of service, proposed, planned or the like take no part.",
+    "Column of the status. Rows that are abandoned, removed, retired, out of service, proposed, planned or the like take no part, also \
+     where more stands beside the word (`AB - Abandoned`). A status that is not known leaves nothing out and is said: for mains, a \
+     warning.",
 );
 const LEAVE_OUT: Key = key(
     "leave_out",
@@ -281,7 +283,8 @@ pub(super) const VALVES: Table = Table {
             Takes::Column,
             "",
             "Column that says `open` or `closed`. Numbers, yes and no are understood where the column's name says what they mean \
-             (`closed`, `is_open`). Abandoned and proposed valves take no part.",
+             (`closed`, `is_open`). Where it cannot be told, a zone valve is taken as closed and any other as open, and it is said. \
+             Abandoned and proposed valves take no part.",
         ),
         key(
             "main",
@@ -464,7 +467,8 @@ pub(super) const FRICTION: Table = Table {
             "age_in_year",
             Takes::Plain,
             "the year of the run",
-            "The year that the ages of mains are counted to.",
+            "The year that the ages of mains are counted to. Give it, or friction that rests on age changes from one year to the next; the \
+             year used is among the settings of the report.",
         ),
     ],
 };

@@ -113,33 +113,11 @@ fn gather(work: &Work, spot: u32, candidates: &mut Vec<Candidate>) {
     if near.is_empty() || work.web.ends(spot).next().is_none() {
         return;
     }
-    let at = work.web.at[spot as usize];
     let free = free_end(work, spot);
     let mut heading_for_an_end = false;
     let mut crossed = Vec::new();
     for &hit in near {
-        let mut by_an_end = false;
-        for last in [false, true] {
-            let end = End::new(hit.line, last);
-            let other = work.web.spot_of_end[end.at()];
-            let apart = distance_m(work.lines.end_at(end), at);
-            if other == spot || apart > tolerance_m || work.web.trimmed[end.at()].is_some() {
-                continue;
-            }
-            by_an_end = true;
-            if work.web.same(spot, other) {
-                continue;
-            }
-            let ahead = heads_for(work, spot, other) || heads_for(work, other, spot);
-            heading_for_an_end |= heads_for(work, spot, other);
-            let weight = if ahead { 1.0 } else { 1.5 };
-            candidates.push(Candidate {
-                cost: apart * weight,
-                spot,
-                to: Target::Spot(other),
-                distance_m: apart,
-            });
-        }
+        let by_an_end = gather_ends(work, spot, hit, candidates, &mut heading_for_an_end);
         let meets = work
             .web
             .stops(&work.lines, hit.line)
@@ -168,6 +146,45 @@ fn gather(work: &Work, spot: u32, candidates: &mut Vec<Candidate>) {
             distance_m: tail_m,
         });
     }
+}
+
+/// The joins of a spot with the ends of a line near it. Tells whether an end is within reach at all, and notes whether the
+/// spot is heading for one.
+fn gather_ends(
+    work: &Work,
+    spot: u32,
+    hit: Hit,
+    candidates: &mut Vec<Candidate>,
+    heading_for_an_end: &mut bool,
+) -> bool {
+    let at = work.web.at[spot as usize];
+    let mut by_an_end = false;
+    for last in [false, true] {
+        let end = End::new(hit.line, last);
+        let other = work.web.spot_of_end[end.at()];
+        let apart = distance_m(work.lines.end_at(end), at);
+        if other == spot || apart > work.settings.tolerance_m || work.web.trimmed[end.at()].is_some() {
+            continue;
+        }
+        by_an_end = true;
+        if work.web.same(spot, other) {
+            continue;
+        }
+        let heads = heads_for(work, spot, other);
+        *heading_for_an_end |= heads;
+        let weight = if heads || heads_for(work, other, spot) {
+            1.0
+        } else {
+            1.5
+        };
+        candidates.push(Candidate {
+            cost: apart * weight,
+            spot,
+            to: Target::Spot(other),
+            distance_m: apart,
+        });
+    }
+    by_an_end
 }
 
 /// A node of the line that was hit which the spot belongs to rather than to the bare line: one it is heading for, or one so

@@ -66,8 +66,8 @@ const CONVERSIONS: [&str; 32] = [
 /// A file has one subject: no more lines than this above its tests.
 const MOST_LINES: usize = 625;
 
-/// Files that are a single long table.
-const TABLES: [&str; 1] = ["src/study/keys.rs"];
+/// A function fits a screen: no more lines than this, from its name to its closing brace.
+const MOST_LINES_OF_A_FUNCTION: usize = 65;
 
 fn root() -> &'static Path {
     Path::new(env!("CARGO_MANIFEST_DIR"))
@@ -262,15 +262,49 @@ fn every_source_file_says_what_it_is_about() {
 
 #[test]
 fn a_file_has_one_subject() {
-    let is_table = |path: &Path| TABLES.iter().any(|table| path == Path::new(table));
     let long = program()
         .into_iter()
-        .filter(|(path, text)| text.lines().count() > MOST_LINES && !is_table(path));
+        .filter(|(_, text)| text.lines().count() > MOST_LINES);
     assert_none(
         &long
             .map(|(path, text)| format!("{}: {} lines", path.display(), text.lines().count()))
             .collect::<Vec<_>>(),
     );
+}
+
+#[test]
+fn a_function_fits_a_screen() {
+    let mut wrong = Vec::new();
+    for (path, text) in program().into_iter().chain(sources("sample-data")) {
+        for (name, lines) in functions(&text) {
+            if lines > MOST_LINES_OF_A_FUNCTION {
+                wrong.push(format!("{}: {name} has {lines} lines", path.display()));
+            }
+        }
+    }
+    assert_none(&wrong);
+}
+
+/// The functions of a formatted source file with their lengths. One without a body, or in a line, is none.
+fn functions(text: &str) -> Vec<(String, usize)> {
+    let lines: Vec<&str> = text.lines().collect();
+    let mut found = Vec::new();
+    for (at, line) in lines.iter().enumerate() {
+        let code = line.trim_start();
+        let mut words = code
+            .split(' ')
+            .skip_while(|word| word.starts_with("pub") || *word == "const");
+        if words.next() != Some("fn") || line.ends_with(';') || line.ends_with('}') {
+            continue;
+        }
+        let name = words.next().unwrap_or_default();
+        let name = name.split(['(', '<']).next().unwrap_or_default();
+        let end = format!("{}}}", &line[..line.len() - code.len()]);
+        if let Some(last) = lines[at..].iter().position(|line| *line == end) {
+            found.push((name.to_string(), last + 1));
+        }
+    }
+    found
 }
 
 #[test]
@@ -289,4 +323,6 @@ fn the_rules_see_what_they_should() {
     assert!(!uses("use crate::reporting::X;", "report"));
     assert_eq!(code_alone("let a = \"25.4 // x\"; // 25.4\nb"), "let a = ; \nb");
     assert_eq!(code_alone("'\"' 9.81"), "' 9.81");
+    let code = "impl A {\n    pub fn long(\n        a: u8,\n    ) {\n        b();\n    }\n    fn short() {}\n}\npub(super) fn c<T>() {\n}";
+    assert_eq!(functions(code), [("long".to_string(), 5), ("c".to_string(), 2)]);
 }

@@ -201,6 +201,32 @@ fn off_main(town: &mut Town) {
 }
 
 fn node_points(town: &mut Town) {
+    nodes_off_mains(town);
+    let fits = |node: &Node| {
+        node.drawn && node.kind == "node" && node.elevation_m.is_some_and(|metres| metres > 11.0 && metres < 20.0)
+    };
+    let corners: Vec<usize> = (0..town.nodes.len())
+        .filter(|node| fits(&town.nodes[*node]) && town.mains_at(*node).len() >= 3)
+        .collect();
+    elevations_never_surveyed(town);
+    for node in corners.iter().skip(7).step_by(23).take(6) {
+        town.nodes[*node].elevation_m = None;
+        let id = node_id(town, *node);
+        on(
+            town,
+            "nodes",
+            id,
+            ["missing elevation", "elevation-missing"],
+            String::new(),
+            "",
+        );
+    }
+    for (node, demand_lps) in corners.iter().skip(3).step_by(31).take(4).zip([1.8, 0.9, 2.4, 0.7]) {
+        town.nodes[*node].demand_lps = demand_lps;
+    }
+}
+
+fn nodes_off_mains(town: &mut Town) {
     for start in [[-330.0, -250.0], [700.0, -250.0]] {
         let at = clear_place(town, start, 16.0);
         let node = town.add_node(at, "low");
@@ -215,13 +241,10 @@ fn node_points(town: &mut Town) {
             "has a demand, lies over 15 m from any main",
         );
     }
-    let fits = |node: &Node| {
-        node.drawn && node.kind == "node" && node.elevation_m.is_some_and(|metres| metres > 11.0 && metres < 20.0)
-    };
-    let corners: Vec<usize> = (0..town.nodes.len())
-        .filter(|node| fits(&town.nodes[*node]) && town.mains_at(*node).len() >= 3)
-        .collect();
-    // High on the hill, where a filler of 0 digs a pit.
+}
+
+/// Two nodes high on the hill, where a filler of 0 digs a pit.
+fn elevations_never_surveyed(town: &mut Town) {
     let stands_out = |node: &usize| {
         let here = town.mains_at(*node);
         let far_end = |main: &usize| town.mains[*main].ends[0] + town.mains[*main].ends[1] - *node;
@@ -252,21 +275,6 @@ fn node_points(town: &mut Town) {
             String::new(),
             "0 on the hill",
         );
-    }
-    for node in corners.iter().skip(7).step_by(23).take(6) {
-        town.nodes[*node].elevation_m = None;
-        let id = node_id(town, *node);
-        on(
-            town,
-            "nodes",
-            id,
-            ["missing elevation", "elevation-missing"],
-            String::new(),
-            "",
-        );
-    }
-    for (node, demand_lps) in corners.iter().skip(3).step_by(31).take(4).zip([1.8, 0.9, 2.4, 0.7]) {
-        town.nodes[*node].demand_lps = demand_lps;
     }
 }
 

@@ -124,8 +124,21 @@ fn numbered(names: [&'static str; 2], first: u32, count: usize) -> Column {
 }
 
 fn mains(town: &Town) -> Table {
+    let shape = |drawing: &Drawing| match drawing {
+        Drawing::Null => Shape::Null,
+        Drawing::Empty => Shape::Empty,
+        Drawing::Lines(lines) => Shape::Lines(lines.clone()),
+    };
+    Table {
+        name: "mains",
+        shapes: town.mains.iter().map(|main| shape(&main.drawing)).collect(),
+        columns: columns_of_mains(town),
+    }
+}
+
+fn columns_of_mains(town: &Town) -> Vec<Column> {
     let mains = town.mains.iter();
-    let columns = vec![
+    vec![
         same(
             ["main_id", "MAINID"],
             number(8, 0),
@@ -177,17 +190,7 @@ fn mains(town: &Town) -> Table {
         ),
         same(["zone", "PZONE"], text(8), mains.clone().map(|main| words(main.zone))),
         same(["road", "ROAD"], text(24), mains.clone().map(|main| words(&main.road))),
-    ];
-    let shape = |drawing: &Drawing| match drawing {
-        Drawing::Null => Shape::Null,
-        Drawing::Empty => Shape::Empty,
-        Drawing::Lines(lines) => Shape::Lines(lines.clone()),
-    };
-    Table {
-        name: "mains",
-        shapes: mains.map(|main| shape(&main.drawing)).collect(),
-        columns,
-    }
+    ]
 }
 
 fn nodes(town: &Town) -> Table {
