@@ -12,19 +12,19 @@ use gradeline::screening::{Fire, Flag, Limit, LimitBy, Limits, Untested};
 use gradeline::topology::JoinSettings;
 use gradeline::watch::Unwatched;
 
-const MAINS: u16 = 0;
-const NODES: u16 = 1;
-const HYDRANTS: u16 = 2;
-const CUSTOMERS: u16 = 3;
-const VALVES: u16 = 4;
+pub(super) const MAINS: u16 = 0;
+pub(super) const NODES: u16 = 1;
+pub(super) const HYDRANTS: u16 = 2;
+pub(super) const CUSTOMERS: u16 = 3;
+pub(super) const VALVES: u16 = 4;
 
 /// Head lost along a main, m, by the velocity form V = 1.318 C R^0.63 S^0.54 (US units, Williams & Hazen 1905) turned
 /// into SI by hand: h = 10.66992 L Q^(1/0.54) / (C^(1/0.54) D^(2.63/0.54)).
-fn hand_loss_m(length_m: f64, flow_m3_per_s: f64, c: f64, diameter_m: f64) -> f64 {
+pub(super) fn hand_loss_m(length_m: f64, flow_m3_per_s: f64, c: f64, diameter_m: f64) -> f64 {
     10.66992 * length_m * (flow_m3_per_s / c).powf(1.0 / 0.54) / diameter_m.powf(2.63 / 0.54)
 }
 
-fn empty() -> Assets {
+pub(super) fn empty() -> Assets {
     Assets {
         mains: Vec::new(),
         left_out: Vec::new(),
@@ -42,7 +42,7 @@ fn empty() -> Assets {
     }
 }
 
-fn add_main(assets: &mut Assets, line: &[Point], diameter_mm: Option<f64>) {
+pub(super) fn add_main(assets: &mut Assets, line: &[Point], diameter_mm: Option<f64>) {
     let row = assets.mains.len() as u32;
     assets.mains.push(Main {
         origin: FeatureRef { layer: MAINS, row },
@@ -64,7 +64,7 @@ fn add_main(assets: &mut Assets, line: &[Point], diameter_mm: Option<f64>) {
     });
 }
 
-fn add_node(assets: &mut Assets, at: Point, elevation_m: Option<f64>, head_m: Option<f64>, demand_lps: f64) {
+pub(super) fn add_node(assets: &mut Assets, at: Point, elevation_m: Option<f64>, head_m: Option<f64>, demand_lps: f64) {
     let row = assets.nodes.len() as u32;
     let valued = |value: f64| Valued {
         value,
@@ -86,7 +86,7 @@ fn add_node(assets: &mut Assets, at: Point, elevation_m: Option<f64>, head_m: Op
     });
 }
 
-fn add_hydrant(assets: &mut Assets, at: Point, elevation_m: Option<f64>, needed_lps: Option<f64>) {
+pub(super) fn add_hydrant(assets: &mut Assets, at: Point, elevation_m: Option<f64>, needed_lps: Option<f64>) {
     let row = assets.hydrants.len() as u32;
     assets.hydrants.push(Hydrant {
         origin: FeatureRef { layer: HYDRANTS, row },
@@ -100,7 +100,7 @@ fn add_hydrant(assets: &mut Assets, at: Point, elevation_m: Option<f64>, needed_
     });
 }
 
-fn add_customer(assets: &mut Assets, at: Point, demand_lps: f64, class: Option<u32>, lift_m: f64) {
+pub(super) fn add_customer(assets: &mut Assets, at: Point, demand_lps: f64, class: Option<u32>, lift_m: f64) {
     let row = assets.customers.len() as u32;
     assets.customers.push(Customer {
         origin: FeatureRef { layer: CUSTOMERS, row },
@@ -113,7 +113,7 @@ fn add_customer(assets: &mut Assets, at: Point, demand_lps: f64, class: Option<u
     });
 }
 
-fn average_day() -> Case {
+pub(super) fn average_day() -> Case {
     Case {
         name: "average day".into(),
         demand_times: 1.0,
@@ -122,7 +122,7 @@ fn average_day() -> Case {
     }
 }
 
-fn settings(cases: Vec<Case>, fire: Option<Fire>) -> Settings {
+pub(super) fn settings(cases: Vec<Case>, fire: Option<Fire>) -> Settings {
     Settings {
         joining: JoinSettings::default(),
         assembly: AssemblySettings::default(),
@@ -133,7 +133,7 @@ fn settings(cases: Vec<Case>, fire: Option<Fire>) -> Settings {
     }
 }
 
-fn fire(keep_elsewhere_m: Option<f64>, needed_lps: Option<f64>) -> Fire {
+pub(super) fn fire(keep_elsewhere_m: Option<f64>, needed_lps: Option<f64>) -> Fire {
     Fire {
         case: 0,
         residual_m: Limit::of_study(14.0),
@@ -142,23 +142,23 @@ fn fire(keep_elsewhere_m: Option<f64>, needed_lps: Option<f64>) -> Fire {
     }
 }
 
-fn run(assets: &Assets, settings: &Settings) -> Calculation {
+pub(super) fn run(assets: &Assets, settings: &Settings) -> Calculation {
     calculate(assets, settings, Vec::new(), &Unwatched).expect("nobody cancels")
 }
 
 /// The node nearest to a place.
-fn node_at(found: &Calculation, at: Point) -> usize {
+pub(super) fn node_at(found: &Calculation, at: Point) -> usize {
     let far = |node: &gradeline::topology::MapNode| (node.at[0] - at[0]).hypot(node.at[1] - at[1]);
     let nodes = found.map.nodes.iter().enumerate();
     nodes.min_by(|a, b| far(a.1).total_cmp(&far(b.1))).expect("a node").0
 }
 
-fn close(a: f64, b: f64, tolerance: f64) {
+pub(super) fn close(a: f64, b: f64, tolerance: f64) {
     assert!((a - b).abs() <= tolerance, "{a} is not {b} to within {tolerance}");
 }
 
 /// A source at head 50 m, one main of 1000 m, bore 150 mm, C 100, and 10 l/s drawn at its end.
-fn one_main() -> Assets {
+pub(super) fn one_main() -> Assets {
     let mut assets = empty();
     add_main(&mut assets, &[[0.0, 0.0], [1000.0, 0.0]], Some(150.0));
     add_node(&mut assets, [0.0, 0.0], Some(10.0), Some(50.0), 0.0);

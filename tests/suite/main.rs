@@ -12,3 +12,4 @@ mod properties;
 mod sample_town;
 mod study_file;
 mod tidy;
+mod verdicts;
