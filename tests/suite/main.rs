@@ -9,6 +9,7 @@ mod generated;
 mod hydraulic;
 mod numbers;
 mod properties;
+mod recheck;
 mod sample_town;
 mod study_file;
 mod tidy;
