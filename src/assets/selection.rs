@@ -4,10 +4,14 @@
 use super::columns::{as_compared, compared_cell};
 use super::desk::Desk;
 use super::reading::LeftOut;
-use super::settings::LayerColumns;
+use super::settings::{LayerColumns, LeaveOut};
 use super::words::{Use, use_of};
 use super::{Role, cells};
-use crate::finding::{Code, Error, FeatureRef, Sentence, Severity};
+use crate::finding::{Code, Error, FeatureRef, Finding, Sentence, Severity};
+use crate::layers::Column;
+
+/// Values of a column that are listed in a finding.
+const VALUES_LISTED: usize = 8;
 
 impl Desk<'_> {
     /// Which rows of a layer take part. `status_is_use`: whether words that are unknown as a status are to be said (a valve's
@@ -71,11 +75,33 @@ impl Desk<'_> {
                     ));
                 }
             }
+            if out.is_empty() {
+                self.say_idle_rule(column, rule);
+            }
             for (word, features) in by_word(out) {
                 self.take_out(taking_part, format!("`{}` is {word}", column.name), features);
             }
         }
         Ok(())
+    }
+
+    /// A rule that fits no row is likely misspelt.
+    fn say_idle_rule(&mut self, column: &Column, rule: &LeaveOut) {
+        let mut values: Vec<String> = column.cells.iter().filter_map(cells::text).collect();
+        values.sort();
+        values.dedup();
+        if values.is_empty() {
+            return;
+        }
+        let more = if values.len() > VALUES_LISTED { ", ..." } else { "" };
+        values.truncate(VALUES_LISTED);
+        let said = format!(
+            "`leave_out` by `{}` leaves out nothing: no row is {}; its values are {}{more}",
+            column.name,
+            rule.values.join(" or "),
+            values.join(", "),
+        );
+        self.findings.push(Finding::new(Code::LeaveOutIdle, said.into()));
     }
 
     /// Takes features out by a rule, and keeps the list.

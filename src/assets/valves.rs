@@ -142,14 +142,18 @@ impl Desk<'_> {
             return Ok(vec![None; self.layer(layer).rows() as usize]);
         };
         let mut by_id: HashMap<&str, Vec<u32>> = HashMap::new();
+        let mut in_any_case: HashMap<String, Vec<u32>> = HashMap::new();
         for (index, main) in mains.iter().enumerate() {
             if let Some(id) = self.names.id(main.origin) {
                 by_id.entry(id).or_default().push(index as u32);
+                in_any_case.entry(id.to_lowercase()).or_default().push(index as u32);
             }
         }
+        // An id that fits no main as it is spelt may fit one in another case.
         let named = column.cells.iter().map(|cell| {
             let id = cells::id(cell)?;
-            Some(match by_id.get(&*id) {
+            let known = by_id.get(&*id).or_else(|| in_any_case.get(&id.to_lowercase()));
+            Some(match known {
                 Some(mains) => NamedMain::Known(mains.clone()),
                 None => NamedMain::Unknown(id.into()),
             })

@@ -316,10 +316,10 @@ pub(super) fn is_shut(cell: &Cell, column: &str) -> Option<bool> {
         Cell::Whole(value) => yes_of_number(*value as f64),
         Cell::Real(value) => yes_of_number(*value),
         Cell::Text(text) => match plain(text).as_str() {
-            "closed" | "close" | "shut" | "cl" | "clsd" | "normally closed" | "normally shut" | "nc" | "n c"
+            "closed" | "close" | "shut" | "c" | "cl" | "clsd" | "normally closed" | "normally shut" | "nc" | "n c"
             | "locked closed" | "permanently closed" | "closed valve" => return Some(true),
-            "open" | "opened" | "op" | "normally open" | "n o" | "locked open" | "fully open" | "permanently open"
-            | "open valve" => {
+            "open" | "o" | "opened" | "op" | "normally open" | "n o" | "locked open" | "fully open"
+            | "permanently open" | "open valve" => {
                 return Some(false);
             }
             "true" | "yes" | "y" | "t" | "1" => Some(true),

@@ -176,6 +176,10 @@ codes! {
         "Nodes, hydrants, customers or valves are left out by a rule of the study."
         "Their demands and heads are missing from the calculation, and nothing is said about them."
         "Check that the rule means what it leaves out."
+    LeaveOutIdle "leave-out-idle" Map Warning
+        "A rule of the study leaves out nothing: no row has the value it names."
+        "What was meant to be left out is calculated with the rest."
+        "Spell the value as the layer does; the values that it has are listed."
     // ---- topology ----------------------------------------------------------------------------------------------
     MultipartMerged "multipart-merged" Map Note
         "A main of several parts was put together where the parts touch."

@@ -739,3 +739,42 @@ fn a_layer_without_a_diameter_column_is_one_serious_finding() {
         (Code::DiameterMissing, Severity::Serious)
     );
 }
+
+#[test]
+fn a_rule_that_leaves_nothing_out_is_said_with_the_values_there_are() {
+    let rows = [json!({"id": "a", "life": "ACT"}), json!({"id": "b", "life": "aband."})];
+    let read = read_mains("leave_out = { life = [\"ABANDONED\"] }", &rows);
+    let said = read
+        .findings
+        .iter()
+        .find(|finding| finding.code == Code::LeaveOutIdle)
+        .expect("said");
+    let words = format!("{:?}", said.message);
+    assert!(words.contains("ABANDONED") && words.contains("ACT, aband."), "{words}");
+    let read = read_mains("leave_out = { life = [\"ACT\"] }", &rows);
+    assert!(read.findings.iter().all(|finding| finding.code != Code::LeaveOutIdle));
+}
+
+#[test]
+fn a_main_is_found_by_an_id_in_another_case_if_none_fits_as_spelt() {
+    let study = "[mains]\nfrom = \"m.geojson\"\nid = \"id\"\ndiameter = { column = \"d\", unit = \"mm\" }\n\
+        [valves]\nfrom = \"v.geojson\"\nid = \"id\"\nstatus = \"s\"\nmain = \"on\"";
+    let layers = [
+        (
+            "m.geojson",
+            mains(&[json!({"id": "WM-1", "d": 100}), json!({"id": "wm-2", "d": 100})]),
+        ),
+        (
+            "v.geojson",
+            points(&[
+                json!({"id": 1, "s": "C", "on": "wm-1"}),
+                json!({"id": 2, "s": "O", "on": "wm-2"}),
+            ]),
+        ),
+    ];
+    let read = read(study, &layers).expect("a good study");
+    let valves = &read.value.assets.valves;
+    assert_eq!(valves[0].main, Some(NamedMain::Known(vec![0])));
+    assert_eq!(valves[1].main, Some(NamedMain::Known(vec![1])));
+    assert_eq!([valves[0].closed.value, valves[1].closed.value], [true, false]);
+}
