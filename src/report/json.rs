@@ -168,7 +168,8 @@ fn cases(report: &Report<'_>) -> Value {
             "name": solved.case.name,
             "proved": proved,
             "steps": steps,
-            "demand_m3_per_s": solved.demand_m3_per_s.iter().sum::<f64>(),
+            // Not `sum`: that of nothing is minus zero.
+            "demand_m3_per_s": solved.demand_m3_per_s.iter().fold(0.0, |all, one| all + one),
             "residuals": {
                 "continuity_m3_per_s": residuals.continuity_m3_per_s,
                 "head_m": residuals.head_m,

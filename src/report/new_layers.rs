@@ -7,13 +7,13 @@ use super::labels::Labels;
 use super::mark_layers::{FRICTION, case_name, friction_entries};
 use super::rows::{Entry, Rows};
 use super::{Report, Words};
-use crate::assets::{Assets, Drawing, Point, ValveKind};
+use crate::assets::{Assets, Drawing, NodeKind, Point, ValveKind};
 use crate::finding::{Error, FeatureRef, Finding};
 use crate::hydraulics::State;
 use crate::layers::result_columns::{DEVICES, FINDINGS, JOINS, NODE_CASES, NODES, PART_CASES, PARTS};
 use crate::layers::{Crs, Geometry, NewLayer, OutputDir, Table, output_crs, write_new};
 use crate::screening::{NodeVerdict, PartVerdict, Solved};
-use crate::topology::{JoinKind, ValvePlace};
+use crate::topology::{JoinKind, MapNode, ValvePlace};
 use crate::units::Unit;
 
 /// Writes every layer there is data for.
@@ -152,10 +152,6 @@ fn parts(report: &Report<'_>) -> Table {
 fn nodes(report: &Report<'_>) -> Table {
     let (assets, map) = (report.assets(), report.inputs.map);
     let calculation = report.inputs.calculation;
-    let mut kind = vec!["node"; map.nodes.len()];
-    for source in calculation.iter().flat_map(|calculation| &calculation.network.sources) {
-        kind[source.node.at()] = if source.tank { "tank" } else { "source" };
-    }
     let zones = node_zones(report);
     let mut table = Rows::new(NODES, report.inputs.units, map.nodes.len());
     for (at, node) in map.nodes.iter().enumerate() {
@@ -169,21 +165,31 @@ fn nodes(report: &Report<'_>) -> Table {
         let elevation = calculation.map_or_else(known, |calculation| calculation.network.elevation_m[at]);
         table.push([
             report.labels.node(at).into(),
-            kind[at].into(),
+            node_kind(assets, node).into(),
             zones[at].map(|zone| assets.zones[zone as usize].as_str()).into(),
             elevation.map(|elevation| elevation.value).into(),
             elevation.map(|elevation| elevation.basis.word()).into(),
             verdict.head_m.into(),
             verdict.lowest_m.into(),
-            calculation.map(|_| verdict.low.flag.word()).into(),
+            verdict.low.flag.word().into(),
             case_name(report, &verdict.low),
             verdict.low.margin_above().into(),
             verdict.high.value.into(),
-            calculation.map(|_| verdict.high.flag.word()).into(),
+            verdict.high.flag.word().into(),
             case_name(report, &verdict.high),
         ]);
     }
     table.into_table()
+}
+
+/// What stands at a node: the first point with a known head counts, as in the calculation.
+fn node_kind(assets: &Assets, node: &MapNode) -> &'static str {
+    let mut points = node.points.iter().map(|point| &assets.nodes[*point as usize]);
+    match points.find(|point| point.head_m.is_some()).map(|point| point.kind) {
+        None => "node",
+        Some(NodeKind::Tank) => "tank",
+        Some(_) => "source",
+    }
 }
 
 /// The zone of each node: of its own point, else of a main that ends there.

@@ -79,6 +79,11 @@ fn tested(out: &mut String, report: &Report<'_>, words: &Words<'_>) -> std::fmt:
         return writeln!(out);
     };
     let coverage = &calculation.screened.coverage;
+    if coverage.length_m == 0.0 {
+        let title = report.inputs.title;
+        writeln!(out, "{title}: no main is left to calculate with; nothing was tested.")?;
+        return writeln!(out);
+    }
     let length = words.distance(coverage.length_m);
     let untested = coverage.untested_share();
     write!(
@@ -355,7 +360,7 @@ fn solution(out: &mut String, calculation: &Calculation, report: &Report<'_>) ->
     if calculation.network.sources.is_empty() {
         return writeln!(
             out,
-            "\nNothing was solved: no node of the map has a known head, and the study names no source"
+            "\nNothing was solved: no main hangs together with a node of known head, nor with a source of the study"
         );
     }
     writeln!(out, "\nHow good the solution is")?;

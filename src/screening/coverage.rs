@@ -93,7 +93,8 @@ pub(super) fn coverage(subject: &Subject<'_>) -> Coverage {
     untested_m.retain(|(_, m)| *m > 0.0);
     Coverage {
         reason,
-        length_m: network.parts.iter().map(|part| part.length_m).sum(),
+        // Not `sum`: that of nothing is minus zero, and would be printed so.
+        length_m: network.parts.iter().fold(0.0, |all, part| all + part.length_m),
         untested_m,
     }
 }

@@ -220,7 +220,8 @@ fn why_not(subject: &Subject<'_>, fire: Option<&Fire>) -> String {
 fn not_a_peak(subject: &Subject<'_>, solved: &Solved) -> Option<Finding> {
     let average: f64 = subject.network.draws.iter().map(|draw| draw.demand_m3_per_s).sum();
     let drawn: f64 = solved.demand_m3_per_s.iter().sum();
-    (drawn <= average * (1.0 + 1e-9)).then(|| {
+    // Where nobody draws at all, that is said elsewhere.
+    (average > 0.0 && drawn <= average * (1.0 + 1e-9)).then(|| {
         let message = Sentence::new()
             .text(format!("the fire case `{}` draws ", solved.case.name))
             .number(drawn, Quantity::Flow)

@@ -8,6 +8,7 @@ mod damaged_files;
 mod generated;
 mod hydraulic;
 mod numbers;
+mod poor_maps;
 mod properties;
 mod recheck;
 mod sample_town;
