@@ -7,13 +7,13 @@ use super::words::{counted, thousands};
 use super::{Report, Words, Written, plural};
 use crate::assets::{Role, UnitFrom};
 use crate::calculation::Calculation;
-use crate::finding::{About, Code, FeatureRef};
+use crate::finding::{About, Code, FeatureRef, Severity};
 use crate::screening::{FireRun, Flag, HydrantVerdict, Limit};
 use crate::topology::JoinKind;
 use crate::units::Quantity;
 
-/// Kinds of finding that are shown with an example each; the rest are counted.
-const KINDS_SHOWN: usize = 14;
+/// Kinds of note that are shown with an example each, where there are no more; else they are counted.
+const NOTES_SHOWN: usize = 4;
 /// Hydrants that are shown by name.
 const HYDRANTS_SHOWN: usize = 8;
 
@@ -240,14 +240,15 @@ fn doubtful(out: &mut String, report: &Report<'_>, words: &Words<'_>) -> std::fm
     kinds(out, &facts::by_code(report, About::Map), words)
 }
 
-/// Kinds of finding, one line each with its most serious example.
+/// Kinds of finding, one line each with its most serious example; many kinds of note in one line.
 fn kinds(out: &mut String, found: &[OfCode<'_>], words: &Words<'_>) -> std::fmt::Result {
-    for of in found.iter().take(KINDS_SHOWN) {
+    let (notes, doubts): (Vec<&OfCode>, Vec<&OfCode>) = found.iter().partition(|of| of.worst == Severity::Note);
+    let few = notes.len() <= NOTES_SHOWN;
+    for of in doubts.into_iter().chain(notes.iter().copied().filter(|_| few)) {
         let example = words.sentence(&of.first.message);
-        let more = if of.count > 1 {
-            format!(" (and {} more)", thousands(of.count - 1))
-        } else {
-            String::new()
+        let more = match of.count {
+            1 => String::new(),
+            count => format!(" (and {} more)", thousands(count - 1)),
         };
         writeln!(
             out,
@@ -256,13 +257,11 @@ fn kinds(out: &mut String, found: &[OfCode<'_>], words: &Words<'_>) -> std::fmt:
             of.code.text().name
         )?;
     }
-    let rest: Vec<String> = found
-        .iter()
-        .skip(KINDS_SHOWN)
-        .map(|of| format!("{} {}", of.code.text().name, of.count))
-        .collect();
-    if !rest.is_empty() {
-        writeln!(out, "  and {}", rest.join(", "))?;
+    if !few {
+        let counts = notes
+            .iter()
+            .map(|of| format!("{} {}", of.code.text().name, thousands(of.count)));
+        writeln!(out, "  {:<8} {}", "notes", counts.collect::<Vec<_>>().join(", "))?;
     }
     Ok(())
 }
