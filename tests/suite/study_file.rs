@@ -8,6 +8,7 @@ use gradeline::network::Basis;
 use gradeline::study::{Outcome, RunOptions, Study, Worked, run};
 use gradeline::watch::Unwatched;
 use proptest::prelude::*;
+use proptest::test_runner::RngSeed;
 
 const SAMPLES: &[&str] = &[
     include_str!("../../sample-data/quenlow/study.toml"),
@@ -29,7 +30,7 @@ fn a_study_cut_short_anywhere_is_refused_or_understood() {
 }
 
 proptest! {
-    #![proptest_config(ProptestConfig { failure_persistence: None, cases: 300, ..ProptestConfig::default() })]
+    #![proptest_config(ProptestConfig { failure_persistence: None, cases: 300, rng_seed: RngSeed::Fixed(1905), ..ProptestConfig::default() })]
 
     #[test]
     fn a_garbled_study_is_refused_or_understood(sample in 0..SAMPLES.len(), at in 0..2_000_usize, put in "[ -~\n]{1,3}") {
