@@ -38,6 +38,8 @@ pub struct Calculation {
     pub at_rest: Solved,
     /// What was asked about fire flow.
     pub fire: Option<Fire>,
+    /// The constants and tolerances it was solved with.
+    pub hydraulics: hydraulics::Settings,
     /// Verdicts and fire flows.
     pub screened: Screened,
     /// Every finding, graded, the most serious first.
@@ -91,6 +93,7 @@ pub fn calculate(
         cases,
         at_rest,
         fire: settings.fire.clone(),
+        hydraulics: settings.hydraulics.clone(),
         screened,
         findings,
     })

@@ -32,6 +32,7 @@ pub(super) fn summary(report: &Report<'_>) -> Value {
     all.insert("topology".into(), topology(report));
     all.insert("findings".into(), findings(report));
     if report.inputs.calculation.is_some() {
+        all.insert("laws".into(), laws(report));
         all.insert("coverage".into(), coverage(report));
         all.insert("cases".into(), cases(report));
         all.insert("verdicts".into(), verdicts(report));
@@ -134,6 +135,24 @@ fn findings(report: &Report<'_>) -> Value {
         json!({ "serious": serious, "warning": warning, "note": note, "by_code": codes })
     };
     json!({ "map": of(About::Map), "water": of(About::Water) })
+}
+
+/// Constants of the laws, and the residuals that are accepted.
+fn laws(report: &Report<'_>) -> Value {
+    let Some(calculation) = report.inputs.calculation else {
+        return Value::Null;
+    };
+    let used = &calculation.hydraulics;
+    json!({
+        "hazen_williams": {
+            "constant": used.hazen_williams.constant,
+            "flow_exponent": used.hazen_williams.flow_exponent,
+            "diameter_exponent": used.hazen_williams.diameter_exponent,
+        },
+        "viscosity_m2_per_s": used.viscosity_m2_per_s,
+        "gravity_m_per_s2": used.gravity_m_per_s2,
+        "accepted": { "continuity_m3_per_s": used.continuity_m3_per_s, "head_m": used.head_m },
+    })
 }
 
 fn coverage(report: &Report<'_>) -> Value {
