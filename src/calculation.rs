@@ -39,7 +39,7 @@ pub struct Calculation {
     /// What was asked about fire flow.
     pub fire: Option<Fire>,
     /// The constants and tolerances it was solved with.
-    pub hydraulics: hydraulics::Settings,
+    pub solved_with: hydraulics::Settings,
     /// Verdicts and fire flows.
     pub screened: Screened,
     /// Every finding, graded, the most serious first.
@@ -93,7 +93,7 @@ pub fn calculate(
         cases,
         at_rest,
         fire: settings.fire.clone(),
-        hydraulics: settings.hydraulics.clone(),
+        solved_with: settings.hydraulics.clone(),
         screened,
         findings,
     })

@@ -142,7 +142,7 @@ fn laws(report: &Report<'_>) -> Value {
     let Some(calculation) = report.inputs.calculation else {
         return Value::Null;
     };
-    let used = &calculation.hydraulics;
+    let used = &calculation.solved_with;
     json!({
         "hazen_williams": {
             "constant": used.hazen_williams.constant,
