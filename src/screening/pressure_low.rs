@@ -12,6 +12,8 @@ use crate::units::Quantity;
 
 /// How many customers or hydrants of an area are named in its finding.
 const NAMED_AT_MOST: usize = 50;
+/// Less than this missing is not worth a word, m3/s.
+const NEXT_TO_NOTHING_M3_PER_S: f64 = 1e-6;
 
 /// The pressure at a node that lies worst against its limit, and whose it is.
 #[derive(Clone, Copy)]
@@ -165,8 +167,9 @@ fn area_finding(
     if places > 1 {
         message = message.text(format!("; {places} places that hang together are below the limit"));
     }
-    if let Some(missing) = &undelivered[worst.case] {
-        let missing_m3_per_s: f64 = area.iter().map(|node| missing[*node]).sum();
+    let missing = undelivered[worst.case].as_ref();
+    let missing_m3_per_s: f64 = missing.map_or(0.0, |missing| area.iter().map(|node| missing[*node]).sum());
+    if missing_m3_per_s > NEXT_TO_NOTHING_M3_PER_S {
         message = message.text("; with draws that follow the pressure, ");
         message = message
             .number(missing_m3_per_s, Quantity::Flow)
