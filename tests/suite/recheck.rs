@@ -577,3 +577,22 @@ fn the_summary_names_exactly_the_files_in_the_folder() {
         assert_eq!(beside, 1, "nothing is left beside the results");
     }
 }
+
+/// The written GeoJSON is read by a library that shares nothing with our reader: every layer parses, has as many features
+/// as our reader finds rows, and every geometry is one it knows.
+#[test]
+fn another_reader_of_geojson_takes_every_layer() {
+    let [town, _] = &*BOTH;
+    let layers = town.files.iter().filter_map(|name| name.strip_suffix(".geojson"));
+    let mut read_layers = 0;
+    for name in layers {
+        let path = town.path(name);
+        let text = std::fs::read_to_string(&path).expect("a written file");
+        let Ok(geojson::GeoJson::FeatureCollection(all)) = text.parse() else {
+            panic!("{name} is no feature collection to another reader");
+        };
+        assert_eq!(all.features.len(), read(&path, &[]).rows() as usize, "{name}");
+        read_layers += 1;
+    }
+    assert_eq!(read_layers, 10, "every layer and table of the sample town");
+}
