@@ -25,15 +25,19 @@ const CAUTION: &str =
 #[derive(Debug, Subcommand)]
 pub enum Command {
     /// Do the whole job: join the mains, solve every case, judge pressure, velocity and fire flow, write the layers.
-    #[command(after_help = CHECK_EXAMPLES)]
+    #[command(after_help = CHECK_EXAMPLES, override_usage = CHECK_USAGE)]
     Check(StudyArgs),
     /// Topology and findings alone: which mains connect, and what is doubtful. Needs no demands, sources or elevations.
-    #[command(after_help = MAP_EXAMPLES)]
+    #[command(after_help = MAP_EXAMPLES, override_usage = MAP_USAGE)]
     Map(StudyArgs),
     /// Say what a finding means, why it matters and what to do.
     #[command(after_help = EXPLAIN_EXAMPLES)]
     Explain(ExplainArgs),
 }
+
+const CHECK_USAGE: &str =
+    "gradeline check <STUDY> [--out DIR] [--format FORMAT] [--fail-at SEVERITY] [--quiet | --json]";
+const MAP_USAGE: &str = "gradeline map <STUDY> [--out DIR] [--format FORMAT] [--fail-at SEVERITY] [--quiet | --json]";
 
 const CHECK_EXAMPLES: &str = "\
 Examples:

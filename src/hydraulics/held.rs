@@ -68,11 +68,9 @@ impl Solver {
         own: Kept,
         kept: &[Kept],
     ) -> Result<Held, NotSettled> {
-        if let Some(held) = self.held_without_solving(condition, base, own) {
-            return Ok(held);
-        }
-        let Some(at) = self.number(own.node) else {
-            return Ok(no_flow(Limit::AlreadyLow(own.node), None));
+        let at = match self.to_hold(condition, base, own) {
+            Ok(at) => at,
+            Err(held) => return Ok(*held),
         };
         let mut aim = self.limits(condition, base, at, own, kept);
         let mut newton = self.newton(&self.equations.edges, condition, &condition.source_head_m);
@@ -102,11 +100,9 @@ impl Solver {
         own: Kept,
         kept: &[Kept],
     ) -> Result<Held, NotSettled> {
-        if let Some(held) = self.held_without_solving(condition, base, own) {
-            return Ok(held);
-        }
-        let Some(at) = self.number(own.node) else {
-            return Ok(no_flow(Limit::AlreadyLow(own.node), None));
+        let at = match self.to_hold(condition, base, own) {
+            Ok(at) => at,
+            Err(held) => return Ok(*held),
         };
         let limits = self.limits(condition, base, at, own, kept);
         let solve = |flow: f64, start: &State| {
@@ -154,29 +150,32 @@ impl Solver {
         })
     }
 
-    /// The answers that need no solve: a hydrant on a source, and one that is too low already.
-    fn held_without_solving(&self, condition: &Condition, base: &State, own: Kept) -> Option<Held> {
-        let at = self.number(own.node)?;
+    /// The number of the node to hold; or the answer that needs no solve: of a hydrant that takes no part, is too low
+    /// already, or stands on a source.
+    fn to_hold(&self, condition: &Condition, base: &State, own: Kept) -> Result<usize, Box<Held>> {
+        let Some(at) = self.number(own.node) else {
+            return Err(Box::new(no_flow(Limit::AlreadyLow(own.node), None)));
+        };
         let here = base.head_m[own.node.at()];
         if here < own.head_m || here.is_nan() {
-            return Some(no_flow(Limit::AlreadyLow(own.node), Some(base.clone())));
+            return Err(Box::new(no_flow(Limit::AlreadyLow(own.node), Some(base.clone()))));
         }
-        if at >= self.equations.free {
-            let limit = self.greatest.iter().find(|limit| limit.node == at);
-            return Some(match limit {
-                Some(limit) => Held {
-                    flow_m3_per_s: (limit.greatest - self.given_by(limit, condition, base)).max(0.0),
-                    limit: Limit::Source(limit.source),
-                    state: Some(base.clone()),
-                },
-                None => Held {
-                    flow_m3_per_s: f64::INFINITY,
-                    limit: Limit::Nothing,
-                    state: None,
-                },
-            });
+        if at < self.equations.free {
+            return Ok(at);
         }
-        None
+        let limit = self.greatest.iter().find(|limit| limit.node == at);
+        Err(Box::new(match limit {
+            Some(limit) => Held {
+                flow_m3_per_s: (limit.greatest - self.given_by(limit, condition, base)).max(0.0),
+                limit: Limit::Source(limit.source),
+                state: Some(base.clone()),
+            },
+            None => Held {
+                flow_m3_per_s: f64::INFINITY,
+                limit: Limit::Nothing,
+                state: None,
+            },
+        }))
     }
 
     /// The flow a source gives in a state, m3/s, its own draw included.

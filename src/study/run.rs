@@ -67,8 +67,8 @@ pub fn run(study: &Study, options: &RunOptions, watch: &dyn Watch) -> Result<Out
         Worked::Map(Box::new(map))
     } else {
         let settings = calculation_settings(study, &mut reading)?;
-        let mut calculation = calculation::calculate(&reading.assets, &settings, findings, watch)?;
-        findings = std::mem::take(&mut calculation.findings);
+        let calculation = calculation::calculate(&reading.assets, &settings, findings, watch)?;
+        findings = calculation.findings.clone();
         Worked::Full(Box::new(calculation))
     };
     screening::sort(&mut findings);
