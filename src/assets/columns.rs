@@ -295,6 +295,9 @@ pub(super) fn diameter_unit(values: &[Option<f64>]) -> Option<Unit> {
     }
 }
 
+/// Fewer diameters than this say nothing about their unit by being impossible.
+const FEWEST_FOR_A_UNIT: usize = 8;
+
 /// How a layer's diameters contradict the unit they were read in, if they do.
 pub(super) fn doubtful_diameter_unit(
     layer: u16,
@@ -312,7 +315,8 @@ pub(super) fn doubtful_diameter_unit(
         .collect();
     usable.sort_by(|a, b| a.0.total_cmp(&b.0));
     let (middle, row) = *usable.get(usable.len() / 2)?;
-    let out_of_range = !(0.02..=2.0).contains(&unit.to_si(middle));
+    // In a layer of a few rows an odd one is a fault of its own, found row by row.
+    let out_of_range = usable.len() >= FEWEST_FOR_A_UNIT && !(0.02..=2.0).contains(&unit.to_si(middle));
     // A column of 300 to 600 fits mm only; one of 12 to 48 may be inches or small plastic in mm: only what is both
     // better elsewhere and worse here is doubted.
     let sizes_here = match unit.name {
@@ -326,16 +330,15 @@ pub(super) fn doubtful_diameter_unit(
     }
     let feature = FeatureRef { layer, row: row as u32 };
     let instead = better.map_or(String::new(), |better| format!("; they would fit `{better}`"));
-    let code = if better.is_some() {
-        Code::DiameterUnitWrong
-    } else {
-        Code::DiameterUnitDoubtful
-    };
     let said = Sentence::new().text(format!(
-        "the diameters in `{column}` were read in {unit} ({}), and do not fit it: the middle one is {middle}{instead}",
+        "the diameters in `{column}` were read as `{unit}` ({}), and do not fit it: the middle one is {middle}{instead}",
         from.words()
     ));
-    Some(Finding::new(code, said).severity(Severity::Serious).on(feature))
+    Some(
+        Finding::new(Code::DiameterUnitWrong, said)
+            .severity(Severity::Serious)
+            .on(feature),
+    )
 }
 
 /// Names of the columns that every layer may be read by.

@@ -128,14 +128,10 @@ codes! {
         "A main's diameter is outside what water mains are made in."
         "It cannot be right as it stands: most often the unit is another than stated."
         "Check the unit of the column and the value of this row."
-    DiameterUnitDoubtful "diameter-unit-doubtful" Map Serious
-        "The diameters of a layer do not fit the unit that was stated or inferred."
-        "A wrong unit makes every head loss wrong by orders of magnitude."
-        "Check the column and the unit that the study states for it."
     DiameterUnitWrong "diameter-unit-wrong" Map Serious
-        "The diameters of a layer fit another unit than the one that was stated or inferred."
+        "The diameters of a layer do not fit the unit that was stated or inferred: most are no size of a water main in it."
         "Every head loss would be wrong by orders of magnitude: nothing is calculated until the unit is settled."
-        "State the unit that fits in the study, for example `diameter = { column = \"DIAM\", unit = \"in\" }`."
+        "State in the study the unit that the column is really in: `mm`, `in` or `m`, as in `diameter = { column = \"DIAM\", unit = \"mm\" }`."
     FrictionValueImpossible "friction-value-impossible" Map Warning
         "A C-factor or roughness is outside the range met in practice."
         "Head loss along the main would be wrong; the value is treated as missing."

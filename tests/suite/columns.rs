@@ -162,7 +162,7 @@ fn fillers_and_impossible_diameters_are_found_row_by_row() {
     let impossible = ["main M5", "main M6"].map(|name| vec![name.to_string()]);
     assert_eq!(named(&read, Code::DiameterImpossible), impossible);
     assert_eq!(named(&read, Code::ValueUnreadable), [vec!["main M7".to_string()]]);
-    assert!(named(&read, Code::DiameterUnitDoubtful).is_empty());
+    assert!(named(&read, Code::DiameterUnitWrong).is_empty());
     let known = read
         .value
         .assets
@@ -777,4 +777,21 @@ fn a_main_is_found_by_an_id_in_another_case_if_none_fits_as_spelt() {
     assert_eq!(valves[0].main, Some(NamedMain::Known(vec![0])));
     assert_eq!(valves[1].main, Some(NamedMain::Known(vec![1])));
     assert_eq!([valves[0].closed.value, valves[1].closed.value], [true, false]);
+}
+
+/// Inch sizes written in millimetres fit no list of sizes in either unit; read in inches they are bores of metres.
+#[test]
+fn a_unit_that_makes_most_bores_impossible_stops_a_check() {
+    let rows: Vec<Value> = (0..20)
+        .map(|row| json!({"id": row, "d": ([101.6, 152.4, 203.2][row % 3])}))
+        .collect();
+    let read = read_mains("diameter = { column = \"d\", unit = \"in\" }", &rows);
+    assert_eq!(named(&read, Code::DiameterUnitWrong).len(), 1);
+    let read = read_mains("diameter = { column = \"d\", unit = \"mm\" }", &rows);
+    assert!(named(&read, Code::DiameterUnitWrong).is_empty());
+    let read = read_mains("diameter = { column = \"d\", unit = \"in\" }", &rows[..3]);
+    assert!(
+        named(&read, Code::DiameterUnitWrong).is_empty(),
+        "three odd rows are found one by one"
+    );
 }
